@@ -1,0 +1,1 @@
+"""Weftbook, a registry of crossed trials with an exact memory."""

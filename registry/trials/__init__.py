@@ -1,0 +1,1 @@
+"""The vocabulary of crossed trials, on the standard library alone."""

@@ -1,0 +1,1 @@
+"""Ground that several tests stand on."""

@@ -1,0 +1,99 @@
+"""People, series and studies made through the services, as a person would make them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime, timedelta
+from uuid import UUID, uuid5
+
+from registry.services.opening import Database
+from registry.services.people import Person, add_person
+from registry.services.series_pages import SeriesDraft, new_series
+from registry.services.settings import PasswordCost
+from registry.services.study_plan import start_study
+from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft, new_study
+from registry.services.trial_log import TrialEntry, log_trials
+
+NOW = datetime(2026, 3, 2, 9, 0, tzinfo=UTC)
+CHEAP = PasswordCost(time=1, memory_kib=8, lanes=1)
+PASSWORD = "a long enough password"
+_KEYS = UUID("6f1d3c52-0f3b-4f5e-9a67-0d6d5d8b0a11")
+
+WALK = FactorDraft("walk", "treatment", ("serpentine", "largest gap", "return"))
+START = FactorDraft("start", "treatment", ("front", "back"))
+SHIFT = FactorDraft("shift", "block", ("early", "late"))
+MINUTES = ResponseDraft(
+    name="minutes", about="minutes per tour", unit="min", step="0.1", margin="0.8", wanted="lower", kind="measured",
+    part="primary",
+)  # fmt: skip
+WRONG_PICK = ResponseDraft(
+    name="wrong pick", about="whether the tour had a wrong pick", unit="count", step="1", margin="", wanted="lower",
+    kind="yes_no", part="guard",
+)  # fmt: skip
+
+
+@dataclass(frozen=True)
+class Place:
+    """A registry with one keeper and one study, and the calls tests make most."""
+
+    database: Database
+    keeper: Person
+    series_id: int
+    study_id: int
+
+    def log(self, levels: Mapping[str, str], readings: Mapping[str, str], *, key: int) -> int:
+        """Log one trial under a key made from a number; returns the trial's number."""
+        entry = TrialEntry(key=key_of(key), levels=levels, readings=readings, happened_at=NOW)
+        return log_trials(self.database, self.keeper, self.study_id, [entry], now=NOW)[0].number
+
+
+def key_of(number: int) -> str:
+    """Give a client key that stands for a number."""
+    return str(uuid5(_KEYS, str(number)))
+
+
+def a_keeper(database: Database, *, address: str = "keeper@example.org") -> Person:
+    """Add a keeper of the registry."""
+    return add_person(
+        database, name="Kim Keeper", address=address, password=PASSWORD, keeper=True, now=NOW, hashing=CHEAP
+    )
+
+
+def a_study(
+    database: Database,
+    *,
+    factors: Sequence[FactorDraft] = (WALK, START),
+    responses: Sequence[ResponseDraft] = (MINUTES,),
+    started: bool = True,
+) -> Place:
+    """Make a keeper, a series and a study in it, running unless said otherwise."""
+    keeper = a_keeper(database)
+    series_id = new_series(database, keeper, SeriesDraft("Pick tours", "How tours are walked"), now=NOW)
+    study_id = another_study(database, keeper, series_id, factors=factors, responses=responses, started=started)
+    return Place(database, keeper, series_id, study_id)
+
+
+def another_study(
+    database: Database,
+    keeper: Person,
+    series_id: int,
+    *,
+    title: str = "Walk and start",
+    factors: Sequence[FactorDraft] = (WALK, START),
+    responses: Sequence[ResponseDraft] = (MINUTES,),
+    started: bool = True,
+) -> int:
+    """Make one more study in a series."""
+    draft = StudyDraft(
+        title=title,
+        question="Which walk is fastest from which end?",
+        site="Osierholm",
+        time_zone="Europe/Copenhagen",
+        factors=tuple(factors),
+        responses=tuple(responses),
+    )
+    study_id = new_study(database, keeper, series_id, draft, now=NOW)
+    if started:
+        start_study(database, keeper, study_id, now=NOW + timedelta(minutes=1))
+    return study_id
