@@ -135,8 +135,6 @@ def database_url(dialect: str, request: pytest.FixtureRequest, tmp_path: Path, n
 
 
 @pytest.fixture
-def empty_pair(
-    dialect: str, request: pytest.FixtureRequest, tmp_path: Path, numbers: Iterator[int]
-) -> tuple[str, str]:
+def empty_pair(dialect: str, request: pytest.FixtureRequest, tmp_path: Path, numbers: Iterator[int]) -> tuple[str, str]:
     """Give the addresses of two empty databases of the same kind."""
     return tuple(_empty_url(dialect, request, tmp_path, next(numbers)) for _ in range(2))  # type: ignore[return-value]

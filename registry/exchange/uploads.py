@@ -37,7 +37,9 @@ def read_uploaded(name: str, content: bytes) -> UploadedTable:
     when a head is missing or stands twice, or when the text is not UTF-8.
     """
     if len(content) > LARGEST_UPLOAD:
-        raise _refused(name, f"{len(content) / 1024 / 1024:.1f} MB", f"give at most {LARGEST_UPLOAD // 1024 // 1024} MB")
+        raise _refused(
+            name, f"{len(content) / 1024 / 1024:.1f} MB", f"give at most {LARGEST_UPLOAD // 1024 // 1024} MB"
+        )
     rows = list(_rows_of_text(name, content)) if not _is_workbook(content) else list(_rows_of_workbook(name, content))
     rows = [row for row in rows if any(value.strip() for value in row.values)]
     if not rows:

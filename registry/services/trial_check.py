@@ -122,7 +122,11 @@ def time_faults(happened_at: datetime | None, *, now: datetime, where: str) -> l
     """Refuse a time without zone, or one that has not come yet."""
     place = placed(where, "time")
     if happened_at is not None and happened_at.tzinfo is None:
-        return [Fault(place, f"{happened_at} has no time zone", "give one, as in 2026-03-02T14:05+01:00", "happened_at")]
+        return [
+            Fault(place, f"{happened_at} has no time zone", "give one, as in 2026-03-02T14:05+01:00", "happened_at")
+        ]
     if happened_at is not None and happened_at > now + CLOCK_SLACK:
-        return [Fault(place, f"{happened_at:%Y-%m-%d %H:%M} has not come yet", "check the day and the clock", "happened_at")]
+        return [
+            Fault(place, f"{happened_at:%Y-%m-%d %H:%M} has not come yet", "check the day and the clock", "happened_at")
+        ]
     return []

@@ -90,7 +90,9 @@ def _on_bench(
 def _require_logged_study(unit: StudyUnit) -> None:
     if unit.study.status not in ("running", "closed"):
         raise NotNow(
-            Fault("study", f"{unit.study.title} is {unit.study.status}", "trials change only while running or once closed")
+            Fault(
+                "study", f"{unit.study.title} is {unit.study.status}", "trials change only while running or once closed"
+            )
         )
 
 
@@ -103,7 +105,15 @@ def _checked_reason(reason: str) -> str:
 
 
 def correct_reading(
-    database: Database, person: Person, study_id: int, number: int, *, response: str, text: str, reason: str, now: datetime
+    database: Database,
+    person: Person,
+    study_id: int,
+    number: int,
+    *,
+    response: str,
+    text: str,
+    reason: str,
+    now: datetime,
 ) -> None:
     """Put another reading in place of one that was logged wrong, or add one that was left out."""
     with _on_bench(database, person, study_id, number, reason=reason, now=now) as (bench, why):
@@ -197,7 +207,15 @@ def restore_reading(
 
 
 def _turn_reading(
-    database: Database, person: Person, study_id: int, number: int, *, response: str, keep: bool, reason: str, now: datetime
+    database: Database,
+    person: Person,
+    study_id: int,
+    number: int,
+    *,
+    response: str,
+    keep: bool,
+    reason: str,
+    now: datetime,
 ) -> None:
     with _on_bench(database, person, study_id, number, reason=reason, now=now) as (bench, why):
         found = _named_response(bench.frame, response)

@@ -74,9 +74,7 @@ class Imported:
     last: int
 
 
-def read_upload(
-    database: Database, person: Person, study_id: int, *, name: str, content: bytes, now: datetime
-) -> int:
+def read_upload(database: Database, person: Person, study_id: int, *, name: str, content: bytes, now: datetime) -> int:
     """Keep a file for import, once it can be read as a table; returns the number of its job."""
     read_uploaded(name or "file", content)
     with write_study(database, study_id, person_id=person.id, now=now) as unit:
@@ -115,7 +113,7 @@ def preview(
             choices = _revived(remembered, frame, table.columns)
         twin = earlier_import(session, study_id, kept.digest)
         earlier = f"trials {twin.first_trial} to {twin.last_trial}" if twin else None
-    return _previewed(card, kept, frame, table, tuple(choices), earlier=earlier, now=now)
+        return _previewed(card, kept, frame, table, tuple(choices), earlier=earlier, now=now)
 
 
 def _waiting(kept: ImportJob | None, job: int) -> ImportJob:
@@ -126,9 +124,7 @@ def _waiting(kept: ImportJob | None, job: int) -> ImportJob:
     return kept
 
 
-def _revived(
-    remembered: list[list[str]] | None, frame: StudyFrame, columns: Sequence[str]
-) -> tuple[ColumnChoice, ...]:
+def _revived(remembered: list[list[str]] | None, frame: StudyFrame, columns: Sequence[str]) -> tuple[ColumnChoice, ...]:
     """Use what these heads meant last time, if it still fits this study; else guess."""
     if remembered is not None:
         kinds = {kind: kind for kind in COLUMN_KINDS}
@@ -267,7 +263,12 @@ def _take_in(
         unit.study.id,
         [(trial.number, row.note) for trial, row in zip(trials, rows, strict=True) if row.note],
     )
-    after = {"rows": len(rows), "first": first, "last": last, "digest": _digest(trials, [salted(note) for note in notes])}
+    after = {
+        "rows": len(rows),
+        "first": first,
+        "last": last,
+        "digest": _digest(trials, [salted(note) for note in notes]),
+    }
     unit.record(Happening("trials_imported", after=json.dumps(after), words=kept.name))
     kept.state, kept.ended_at, kept.first_trial, kept.last_trial = "done", now, first, last
     kept.content = None  # The rows are in the record now; the file's digest stays.

@@ -143,7 +143,11 @@ def _checked(
         where = "" if alone else f"trial {place + 1}"
         cell, wrong = find_cell(frame, entry.levels, where=where)
         readings, unread = _readings(frame, entry.readings, where=where)
-        wrong += [*unread, *time_faults(entry.happened_at, now=now, where=where), *_note_faults(entry.note, where=where)]
+        wrong += [
+            *unread,
+            *time_faults(entry.happened_at, now=now, where=where),
+            *_note_faults(entry.note, where=where),
+        ]
         faults += wrong
         if cell is not None and not wrong:
             trials.append(
@@ -199,7 +203,9 @@ def _readings(
 def _note_faults(note: str, *, where: str) -> list[Fault]:
     if len(note.strip()) <= LONGEST_NOTE:
         return []
-    return [Fault(placed(where, "note"), f"{len(note.strip())} characters given", f"give at most {LONGEST_NOTE}", "note")]
+    return [
+        Fault(placed(where, "note"), f"{len(note.strip())} characters given", f"give at most {LONGEST_NOTE}", "note")
+    ]
 
 
 def write_trials(

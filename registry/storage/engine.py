@@ -78,8 +78,12 @@ def _checked(url: str) -> str:
     if parsed is None or backend not in ("sqlite", "postgresql"):
         # The address may hold a password, so the fault names the setting and not its value.
         raise SettingMissing(
-            Fault("WEFTBOOK_DATABASE_URL", "not an address of a database this registry knows",
-                  "give sqlite:///path/to/file.db or postgresql://user@host/name", "database_url")
+            Fault(
+                "WEFTBOOK_DATABASE_URL",
+                "not an address of a database this registry knows",
+                "give sqlite:///path/to/file.db or postgresql://user@host/name",
+                "database_url",
+            )
         )
     if backend == "postgresql":
         parsed = parsed.set(drivername="postgresql+psycopg")
@@ -90,7 +94,12 @@ def _prepare_sqlite(connection: Any, _record: object) -> None:
     # The driver must not open transactions by itself: the unit of work says BEGIN, and which kind.
     connection.isolation_level = None
     cursor = connection.cursor()
-    for pragma in ("journal_mode = WAL", "foreign_keys = ON", "synchronous = NORMAL", f"busy_timeout = {BUSY_SECONDS * 1000}"):
+    for pragma in (
+        "journal_mode = WAL",
+        "foreign_keys = ON",
+        "synchronous = NORMAL",
+        f"busy_timeout = {BUSY_SECONDS * 1000}",
+    ):
         cursor.execute(f"PRAGMA {pragma}")
     cursor.close()
 
@@ -105,4 +114,6 @@ def _begin_sqlite(connection: Connection) -> None:
 
 def _trouble(error: OperationalError) -> Fault:
     reason = str(error.orig).strip().splitlines()[0] if error.orig else "no reason given"
-    return Fault("database", reason, "check that it runs, that `weftbook upgrade` was run, and that nobody holds it locked")
+    return Fault(
+        "database", reason, "check that it runs, that `weftbook upgrade` was run, and that nobody holds it locked"
+    )

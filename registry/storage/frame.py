@@ -95,9 +95,7 @@ class StudyFrame:
 
 def fetch_frame(session: Session, study_id: int) -> StudyFrame:
     """Read a study's frame in a handful of queries, whatever its size."""
-    return StudyFrame(
-        study_id, _factors(session, study_id), _responses(session, study_id), _cells(session, study_id)
-    )
+    return StudyFrame(study_id, _factors(session, study_id), _responses(session, study_id), _cells(session, study_id))
 
 
 def _factors(session: Session, study_id: int) -> tuple[FrameFactor, ...]:

@@ -12,7 +12,7 @@ from datetime import UTC, datetime
 from sqlalchemy import func, select
 from sqlalchemy.orm import Session
 
-from registry.storage.tables import Event, FreeText, RegistryEvent
+from registry.storage.tables import Event, FreeText, Person, RegistryEvent, Response
 
 START = "0" * 64
 
@@ -125,9 +125,57 @@ def hash_of_event(event: Event) -> str:
 
 def hash_of_registry_event(event: RegistryEvent) -> str:
     """Hash everything a registry event says, with the hash of the one before it."""
-    return _hash(
-        event.previous, event.number, _stamp(event.at), event.person_id, event.what, event.before, event.after
+    return _hash(event.previous, event.number, _stamp(event.at), event.person_id, event.what, event.before, event.after)
+
+
+@dataclass(frozen=True)
+class EventRow:
+    """One event with the names and words that belong to it."""
+
+    number: int
+    at: datetime
+    person: str
+    what: str
+    trial: int | None
+    response: str | None
+    before: str | None
+    after: str | None
+    words: str | None
+
+
+def count_events(session: Session, study_id: int) -> int:
+    """Count the events of a study's chain."""
+    return session.scalar(select(func.count()).where(Event.study_id == study_id)) or 0
+
+
+def newest_events(session: Session, study_id: int, *, trial: int | None, limit: int, offset: int) -> list[EventRow]:
+    """Give events of a study, or of one of its trials, the newest first."""
+    statement = (
+        select(Event, Person.name, Response.name, FreeText.body)
+        .join(Person, Person.id == Event.person_id)
+        .outerjoin(Response, Response.id == Event.response_id)
+        .outerjoin(FreeText, (FreeText.study_id == Event.study_id) & (FreeText.number == Event.text_number))
+        .where(Event.study_id == study_id)
+        .order_by(Event.number.desc())
+        .limit(limit)
+        .offset(offset)
     )
+    if trial is not None:
+        statement = statement.where(Event.trial == trial)
+    return [
+        EventRow(
+            number=event.number,
+            at=event.at,
+            person=person,
+            what=event.what,
+            trial=event.trial,
+            response=response,
+            before=event.before,
+            after=event.after,
+            words="(erased)" if event.text_number is not None and body is None else body,
+        )
+        for event, person, response, body in session.execute(statement)
+    ]
 
 
 def broken_links(session: Session, study_id: int) -> list[str]:

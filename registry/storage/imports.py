@@ -40,9 +40,7 @@ def find_upload(session: Session, study_id: int, number: int) -> ImportJob | Non
 def earlier_import(session: Session, study_id: int, digest: str) -> ImportJob | None:
     """Find a finished import of the very same file into the same study."""
     return session.scalars(
-        select(ImportJob).where(
-            ImportJob.study_id == study_id, ImportJob.digest == digest, ImportJob.state == "done"
-        )
+        select(ImportJob).where(ImportJob.study_id == study_id, ImportJob.digest == digest, ImportJob.state == "done")
     ).first()
 
 
@@ -56,9 +54,7 @@ def remember_choices(
     session: Session, series_id: int, heads: Sequence[str], choices: list[list[str]], *, now: datetime
 ) -> None:
     """Keep what columns with these heads meant, for the next file of this series."""
-    session.merge(
-        ColumnMapping(series_id=series_id, heads_digest=_digest(heads), choices=choices, used_at=now)
-    )
+    session.merge(ColumnMapping(series_id=series_id, heads_digest=_digest(heads), choices=choices, used_at=now))
 
 
 def _digest(heads: Sequence[str]) -> str:

@@ -45,9 +45,7 @@ def add_trials(
     )  # fmt: skip
     _load(session, "trial", _TRIAL_COLUMNS, rows)
     readings = (
-        (study_id, trial.number, response_id, steps, True)
-        for trial in trials
-        for response_id, steps in trial.readings
+        (study_id, trial.number, response_id, steps, True) for trial in trials for response_id, steps in trial.readings
     )
     _load(session, "reading", _READING_COLUMNS, readings)
 

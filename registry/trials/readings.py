@@ -74,7 +74,9 @@ def read_steps(text: str, step: Step) -> int:
 
 def nearest_steps(text: str, step: Step) -> int:
     """Read a number as the nearest whole steps, half away from zero: for who rounds knowingly."""
-    return _nearest(Fraction(_number(text, what="reading", accepted=f"give a number in steps of {step}")) / step.fraction)
+    return _nearest(
+        Fraction(_number(text, what="reading", accepted=f"give a number in steps of {step}")) / step.fraction
+    )
 
 
 def write_steps(steps: int, step: Step) -> str:

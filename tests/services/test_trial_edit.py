@@ -71,7 +71,14 @@ def test_the_first_reading_may_be_corrected_and_the_anchor_stays(place: Place) -
 
 def test_a_reading_left_out_can_be_added_later(place: Place) -> None:
     correct_reading(
-        place.database, place.keeper, place.study_id, 1, response="wrong pick", text="no", reason="slip came late", now=NOW
+        place.database,
+        place.keeper,
+        place.study_id,
+        1,
+        response="wrong pick",
+        text="no",
+        reason="slip came late",
+        now=NOW,
     )
 
     assert readings(place, 1)["wrong pick"] == ("no", True)

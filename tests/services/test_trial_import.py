@@ -43,7 +43,11 @@ def test_a_clean_file_is_guessed_previewed_and_taken_in(database: Database) -> N
     seen = look(place, job)
 
     assert seen.ready
-    assert seen.choices == (ColumnChoice("factor", "walk"), ColumnChoice("factor", "start"), ColumnChoice("response", "minutes"))
+    assert seen.choices == (
+        ColumnChoice("factor", "walk"),
+        ColumnChoice("factor", "start"),
+        ColumnChoice("response", "minutes"),
+    )
     assert seen.sample[0] == ("return", "back", "7.1")
     assert trial_list(database, place.keeper, place.study_id).total == 0
     assert take(place, job) == (3, 1, 3)
@@ -53,7 +57,9 @@ def test_a_clean_file_is_guessed_previewed_and_taken_in(database: Database) -> N
 
 
 def test_every_fault_is_named_by_line_and_column_and_nothing_is_written(database: Database) -> None:
-    place = a_study(database, factors=(WALK, START, FactorDraft("batch", "held", ("8",))), responses=(MINUTES, WRONG_PICK))
+    place = a_study(
+        database, factors=(WALK, START, FactorDraft("batch", "held", ("8",))), responses=(MINUTES, WRONG_PICK)
+    )
     job = give(
         place,
         'Walk,start,batch,minutes,wrong pick,when,note\n'
@@ -92,7 +98,10 @@ def test_readings_between_two_steps_are_offered_rounded_once_for_the_whole_file(
         (2, "minutes", "738.0000000000001", "738.0"),
         (3, "minutes", "12.34", "12.3"),
     ]
-    with pytest.raises(InputRefused, match=r"line 2, column minutes: 738.0000000000001 lies between two steps; agree to round it to 738\.0"):
+    with pytest.raises(
+        InputRefused,
+        match=r"line 2, column minutes: 738.0000000000001 lies between two steps; agree to round it to 738\.0",
+    ):
         take(place, job)
     assert take(place, job, round_offered=True) == (2, 1, 2)
     assert trial_detail(database, place.keeper, place.study_id, 1).trial.readings[0].text == "738.0"
@@ -110,7 +119,9 @@ def test_rows_without_a_reading_are_left_out_and_said(database: Database) -> Non
 
 def test_times_without_a_zone_are_the_sites_own_clock(database: Database) -> None:
     place = a_study(database)
-    job = give(place, "walk,start,minutes,when\nreturn,back,7.1,2026-02-02 14:05\nreturn,back,7.1,2026-02-02T14:05+00:00\n")
+    job = give(
+        place, "walk,start,minutes,when\nreturn,back,7.1,2026-02-02 14:05\nreturn,back,7.1,2026-02-02T14:05+00:00\n"
+    )
 
     take(place, job)
 
@@ -134,9 +145,7 @@ def test_what_the_columns_meant_is_remembered_in_the_series(database: Database) 
     heads = "Gang,Ende,Dauer\n"
     job = give(place, heads + "return,back,7.1\n")
     choices = (ColumnChoice("factor", "walk"), ColumnChoice("factor", "start"), ColumnChoice("response", "minutes"))
-    run_import(
-        database, place.keeper, place.study_id, job, choices=choices, round_offered=False, now=NOW
-    )
+    run_import(database, place.keeper, place.study_id, job, choices=choices, round_offered=False, now=NOW)
 
     assert look(place, give(place, heads + "return,back,7.2\n")).choices == choices
 
@@ -146,11 +155,22 @@ def test_choices_that_leave_a_factor_without_column_are_refused(database: Databa
     job = give(place, "walk,end,minutes,again\nreturn,back,7.1,7.1\n")
 
     seen = look(place, job)
-    twice = look(place, job, [ColumnChoice("factor", "walk"), ColumnChoice("factor", "walk"), ColumnChoice("skip"), ColumnChoice("response", "hours")])
+    twice = look(
+        place,
+        job,
+        [
+            ColumnChoice("factor", "walk"),
+            ColumnChoice("factor", "walk"),
+            ColumnChoice("skip"),
+            ColumnChoice("response", "hours"),
+        ],
+    )
 
     assert [str(fault) for fault in seen.faults] == ["columns: no column chosen for start; choose exactly one"]
     assert "columns: 2 columns chosen for walk; choose exactly one" in [str(fault) for fault in twice.faults]
-    assert "column again: 'hours' is no response of this study; choose one of minutes" in [str(fault) for fault in twice.faults]
+    assert "column again: 'hours' is no response of this study; choose one of minutes" in [
+        str(fault) for fault in twice.faults
+    ]
 
 
 @pytest.mark.parametrize(
@@ -177,12 +197,12 @@ def test_a_file_that_is_no_table_is_refused_with_the_line(database: Database, co
 
 
 def test_semicolons_a_byte_order_mark_and_quoted_newlines_are_read(database: Database) -> None:
-    factor = FactorDraft("way", "treatment", ("by\nhand", "cart; \"big\""))
+    factor = FactorDraft("way", "treatment", ("by hand", 'cart; "big"'))
     place = a_study(database, factors=(factor, START))
 
-    job = give(place, '\ufeffway;start;minutes\r\n"by\nhand";back;7.1\r\n"cart; ""big""";front;7.2\r\n')
+    job = give(place, '\ufeffway;start;minutes;note\r\nby hand;back;7.1;"two\nlines"\r\n"cart; ""big""";front;x;\r\n')
 
-    assert take(place, job)[0] == 2
+    assert str(look(place, job).faults[0]).startswith("line 4, column minutes: 'x' given")
 
 
 def test_blocks_are_read_like_factors(database: Database) -> None:

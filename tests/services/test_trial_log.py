@@ -21,7 +21,6 @@ from tests.support.studies import (
     PASSWORD,
     WRONG_PICK,
     FactorDraft,
-    Place,
     a_study,
     key_of,
 )
@@ -106,7 +105,9 @@ def test_a_reading_far_from_the_first_one_is_refused_as_a_slip_of_the_unit(datab
     place = a_study(database)
     log_trials(database, place.keeper, place.study_id, [entry(1)], now=NOW)
 
-    with pytest.raises(ReadingRefused, match="more than 68719476736 steps of 0.1 from the first reading, 7.1; check the unit"):
+    with pytest.raises(
+        ReadingRefused, match="more than 68719476736 steps of 0.1 from the first reading, 7.1; check the unit"
+    ):
         log_trials(database, place.keeper, place.study_id, [entry(2, readings={"minutes": "6871947680.9"})], now=NOW)
 
 
@@ -131,7 +132,9 @@ def test_trials_are_logged_only_while_the_study_runs(database: Database) -> None
 def test_a_viewer_may_not_log_and_a_stranger_may_not_know(database: Database) -> None:
     place = a_study(database)
     viewer, stranger = (
-        add_person(database, name=name, address=f"{name}@example.org", password=PASSWORD, keeper=False, now=NOW, hashing=CHEAP)
+        add_person(
+            database, name=name, address=f"{name}@example.org", password=PASSWORD, keeper=False, now=NOW, hashing=CHEAP
+        )
         for name in ("vera", "sam")
     )
     grant(database, place.keeper, place.series_id, address=viewer.address, role="viewer", now=NOW)
@@ -148,7 +151,10 @@ def test_yes_and_no_are_read_and_shown_as_words(database: Database) -> None:
     place.log(BACK, {"minutes": "7.1", "wrong pick": "Yes"}, key=1)
 
     shown = trial_detail(database, place.keeper, place.study_id, 1).trial
-    assert [(reading.response, reading.text) for reading in shown.readings] == [("minutes", "7.1"), ("wrong pick", "yes")]
+    assert [(reading.response, reading.text) for reading in shown.readings] == [
+        ("minutes", "7.1"),
+        ("wrong pick", "yes"),
+    ]
     with pytest.raises(InputRefused, match="wrong pick: '2' given; give yes or no"):
         place.log(BACK, {"wrong pick": "2"}, key=2)
 
@@ -186,7 +192,11 @@ def test_writers_at_the_same_time_lose_nothing(database: Database) -> None:
 
     def write(who: int) -> list[int]:
         return [
-            place.log({"walk": "return", "start": ("front", "back")[turn % 2]}, {"minutes": f"{who}.{turn}"}, key=who * 100 + turn)
+            place.log(
+                {"walk": "return", "start": ("front", "back")[turn % 2]},
+                {"minutes": f"{who}.{turn}"},
+                key=who * 100 + turn,
+            )
             for turn in range(each)
         ]
 

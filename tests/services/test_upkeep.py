@@ -40,7 +40,9 @@ def test_a_recount_names_the_cell_whose_tally_was_altered(place: Place, column: 
 
     (fault,) = recount(place.database).faults
 
-    assert fault.startswith(f"study {place.study_id} (Walk and start), minutes, walk return, start back: the tally says n ")
+    assert fault.startswith(
+        f"study {place.study_id} (Walk and start), minutes, walk return, start back: the tally says n "
+    )
     assert "a recount of the readings says n 2, sum -2, sum of squares 4" in fault
 
 

@@ -173,9 +173,7 @@ class LivesOfTrials(RuleBasedStateMachine):
 
 
 @pytest.mark.parametrize("dialect", ["sqlite", "postgresql"])
-def test_tallies_equal_a_recount_after_any_history(
-    dialect: str, make_database: Callable[[str], Database]
-) -> None:
+def test_tallies_equal_a_recount_after_any_history(dialect: str, make_database: Callable[[str], Database]) -> None:
     machine = type("Lives", (LivesOfTrials,), {"make_database": staticmethod(lambda: make_database(dialect))})
     machine.TestCase.settings = settings(
         max_examples=12 if dialect == "postgresql" else 25,
@@ -186,7 +184,9 @@ def test_tallies_equal_a_recount_after_any_history(
     machine.TestCase("runTest").runTest()
 
 
-@pytest.mark.parametrize("changes", [[2**72, 2**72, -(2**72)], [LIMB - 1, 1, -LIMB], [5 * LIMB + 7, -(4 * LIMB), 2**98]])
+@pytest.mark.parametrize(
+    "changes", [[2**72, 2**72, -(2**72)], [LIMB - 1, 1, -LIMB], [5 * LIMB + 7, -(4 * LIMB), 2**98]]
+)
 def test_squares_carry_between_the_limbs_and_stay_canonical(database: Database, changes: list[int]) -> None:
     place = a_study(database)
     expected = 0

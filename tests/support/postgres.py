@@ -38,7 +38,7 @@ def running_server() -> Iterator[Server]:
         yield Server(base + "/{name}")
         return
     # The path of a socket may not be longer than 107 bytes, so the folder is a short one.
-    folder = Path(tempfile.mkdtemp(prefix="wb", dir="/tmp"))  # noqa: S108 - mkdtemp makes it ours alone.
+    folder = Path(tempfile.mkdtemp(prefix="wb", dir="/tmp"))
     try:
         binaries = _binaries(folder)
         user = _plain_user()

@@ -4,7 +4,14 @@ from registry.storage.tables.base import Base
 from registry.storage.tables.history import Event, FreeText, RegistryEvent
 from registry.storage.tables.people import AccessToken, Invitation, Membership, Person, SignedSession
 from registry.storage.tables.series import Condition, Factor, Level, LevelAlias, Response, Series
-from registry.storage.tables.sharing import ColumnMapping, Decision, ImportJob, PinnedResult, ReaderLink, ReaderLinkVisits
+from registry.storage.tables.sharing import (
+    ColumnMapping,
+    Decision,
+    ImportJob,
+    PinnedResult,
+    ReaderLink,
+    ReaderLinkVisits,
+)
 from registry.storage.tables.studies import (
     Amendment,
     Cell,

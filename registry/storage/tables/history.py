@@ -26,9 +26,7 @@ class Event(Base):
     """One link of a study's chain; never updated, never deleted."""
 
     __tablename__ = "event"
-    __table_args__ = (
-        ForeignKeyConstraint(["study_id", "text_number"], ["free_text.study_id", "free_text.number"]),
-    )
+    __table_args__ = (ForeignKeyConstraint(["study_id", "text_number"], ["free_text.study_id", "free_text.number"]),)
 
     study_id: Mapped[int] = mapped_column(ForeignKey("study.id"), primary_key=True)
     number: Mapped[int] = mapped_column(BigInteger, primary_key=True, autoincrement=False)

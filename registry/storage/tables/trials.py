@@ -41,9 +41,7 @@ class Reading(Base):
     __tablename__ = "reading"
     __table_args__ = (
         ForeignKeyConstraint(["study_id", "trial"], ["trial.study_id", "trial.number"]),
-        ForeignKeyConstraint(
-            ["study_id", "response_id"], ["study_response.study_id", "study_response.response_id"]
-        ),
+        ForeignKeyConstraint(["study_id", "response_id"], ["study_response.study_id", "study_response.response_id"]),
     )
 
     study_id: Mapped[int] = mapped_column(primary_key=True)
@@ -90,9 +88,7 @@ class TallyRow(Base):
 
     __tablename__ = "tally"
     __table_args__ = (
-        ForeignKeyConstraint(
-            ["study_id", "response_id"], ["study_response.study_id", "study_response.response_id"]
-        ),
+        ForeignKeyConstraint(["study_id", "response_id"], ["study_response.study_id", "study_response.response_id"]),
         ForeignKeyConstraint(["study_id", "cell"], ["cell.study_id", "cell.number"]),
         CheckConstraint("n >= 0 AND n < 134217728", name="n"),
         CheckConstraint("squares_low >= 0 AND squares_low < 1099511627776", name="squares_low"),

@@ -1,0 +1,1 @@
+"""What a person asks for; the only place where storage meets analysis."""
