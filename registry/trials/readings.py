@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Callable
 from dataclasses import dataclass
 from decimal import Context, Decimal, Inexact, InvalidOperation
 from fractions import Fraction
@@ -70,6 +71,34 @@ def read_steps(text: str, step: Step) -> int:
             offered=offered,
         )
     return steps.numerator
+
+
+def steps_reader(step: Step) -> Callable[[str], int | None]:
+    """Give a quick reader for plain decimals of a step that is a power of ten; None means: look closely.
+
+    It exists because a file may hold a million distinct readings, and whole-number
+    arithmetic on plain digits is several times quicker than decimals; what it takes, it
+    takes exactly as read_steps does.
+    """
+    places = step.places
+    if step.size != Decimal(1).scaleb(-places):
+        return lambda text: None
+    zeros = "0" * places
+
+    def read(text: str) -> int | None:
+        whole, _, digits = text.partition(".")
+        if len(digits) > places or not whole.removeprefix("-").isdecimal() or not text.isascii() or len(whole) > 30:
+            return None
+        if digits and not digits.isdecimal():
+            return None
+        return int(whole + digits + zeros[len(digits) :])
+
+    return read
+
+
+def read_decimal(text: str) -> Decimal:
+    """Read a number as an exact decimal, or refuse it as read_steps would."""
+    return _number(text, what="reading", accepted="give a number")
 
 
 def nearest_steps(text: str, step: Step) -> int:

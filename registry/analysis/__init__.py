@@ -1,0 +1,1 @@
+"""The statistics of one study, from its tallies."""

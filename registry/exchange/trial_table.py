@@ -1,0 +1,251 @@
+"""A table of trials on file, tallied exactly without a database, a distinct reading at a time."""
+
+from __future__ import annotations
+
+import csv
+from collections import Counter
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass
+from itertools import islice
+from operator import itemgetter
+from pathlib import Path
+from typing import Any
+
+from registry.errors import Fault, InputRefused, ReadingRefused
+from registry.exchange.workbooks import first_sheet
+from registry.trials.factors import Factor
+from registry.trials.layouts import Layout
+from registry.trials.readings import Step, read_steps, steps_reader
+from registry.trials.tallies import EMPTY, TalliedStudy, Tally
+
+_CHUNK = 20_000
+
+
+@dataclass(frozen=True)
+class Columns:
+    """Which columns of a table are what; ``step`` as typed, or nothing to read it off the decimals."""
+
+    response: str
+    factors: tuple[str, ...]
+    block: str | None = None
+    step: str | None = None
+
+
+@dataclass(frozen=True)
+class TalliedTable:
+    """A table's trials as tallies; ``left_out`` counts the rows without a reading."""
+
+    study: TalliedStudy
+    step: Step
+    left_out: int
+
+
+def tally_table(path: Path, columns: Columns) -> TalliedTable:
+    """Tally every trial of a CSV file or workbook.
+
+    Each distinct row of levels and reading is parsed once, however often it stands there.
+    Raises InputRefused with the line and column of whatever is wrong: a column that is
+    not there, a row too long or short, an empty level, a text that is no number.
+    """
+    _refuse_one_column_twice(columns)
+    counts = _count_rows(path, columns)
+    step = Step.parse(columns.step) if columns.step else _step_of(path, columns, counts)
+    names = [*([columns.block] if columns.block else []), *columns.factors]
+    levels: list[dict[str, int]] = [{} for _ in names]
+    _refuse_no_level(path, columns, counts)
+    # Levels keep the order in which they first appear among the rows that have a reading.
+    for key in counts:
+        if key[-1].strip():
+            for known, level in zip(levels, key, strict=False):
+                known.setdefault(level.strip(), len(known))
+    tallies, anchor, left_out = _tally(path, columns, counts, levels, step)
+    factors = [Factor(name, tuple(known)) for name, known in zip(names, levels, strict=True)]
+    block = factors.pop(0) if columns.block else None
+    layout = Layout(tuple(factors), block)
+    return TalliedTable(TalliedStudy(layout, step.fraction, anchor, tallies), step, left_out)
+
+
+def _refuse_one_column_twice(columns: Columns) -> None:
+    named = [*columns.factors, columns.response, *([columns.block] if columns.block else [])]
+    twice = [name for name, times in Counter(named).items() if times > 1]
+    if twice:
+        raise InputRefused(Fault("columns", f"{twice[0]!r} is named twice", "give each column one part to play"))
+
+
+def _rows(path: Path) -> Iterator[Sequence[str]]:
+    """Give the rows of the file as texts, the heads first; blank rows are not rows."""
+    if path.suffix.lower() == ".xlsx":
+        yield from first_sheet(path.name, path.read_bytes())
+        return
+    with path.open(encoding="utf-8-sig", newline="") as file:
+        yield from csv.reader(file, strict=True)
+
+
+def _count_rows(path: Path, columns: Columns) -> Counter[tuple[str, ...]]:
+    """Count how often each combination of levels and reading stands in the file, in order of first appearance."""
+    counts: Counter[tuple[str, ...]] = Counter()
+    try:
+        rows = _rows(path)
+        heads = next(rows, None)
+        if heads is None:
+            raise InputRefused(Fault(path.name, "there is nothing in it", "give a table with a row of heads"))
+        wanted = itemgetter(*_places(path, heads, columns))
+        width = len(heads)
+        while chunk := list(islice(rows, _CHUNK)):
+            if set(map(len, chunk)) != {width}:
+                chunk = _kept_rows(path, chunk, width)
+            counts.update(map(wanted, chunk))
+    except FileNotFoundError:
+        raise InputRefused(Fault(str(path), "there is no such file", "give the path of a CSV file or workbook")) from None
+    except (IsADirectoryError, PermissionError) as error:
+        raise InputRefused(Fault(str(path), str(error.strerror), "give a file that can be read")) from None
+    except UnicodeDecodeError as error:
+        line = path.read_bytes().count(b"\n", 0, error.start) + 1 if error.start else 1
+        raise InputRefused(
+            Fault(f"{path.name}, near line {line}", "it is not text in UTF-8", "save it as CSV in UTF-8")
+        ) from None
+    except csv.Error as error:
+        raise InputRefused(Fault(f"{path.name}, {_bad_line(path)}", str(error), "check the quotes")) from None
+    if not counts:
+        raise InputRefused(Fault(path.name, "it has heads and no rows", "give one trial a row below the heads"))
+    return counts
+
+
+def _bad_line(path: Path) -> str:
+    with path.open(encoding="utf-8-sig", newline="") as file:
+        reader = csv.reader(file, strict=True)
+        try:
+            for _ in reader:
+                pass
+        except csv.Error:
+            pass
+        return f"line {reader.line_num}"
+
+
+def _places(path: Path, heads: Sequence[str], columns: Columns) -> list[int]:
+    """Find the columns by their heads: block, factors, response."""
+    heads = [head.strip() for head in heads]
+    named = [*([columns.block] if columns.block else []), *columns.factors, columns.response]
+    for name in named:
+        if heads.count(name) != 1:
+            given = "there is no such column" if name not in heads else f"{heads.count(name)} columns have this head"
+            raise InputRefused(
+                Fault(f"{path.name}, column {name!r}", given, "its columns are " + ", ".join(map(repr, heads)))
+            )
+    return [heads.index(name) for name in named]
+
+
+def _kept_rows(path: Path, chunk: list[Sequence[str]], width: int) -> list[Sequence[str]]:
+    """Leave blank rows out; any other row of the wrong length is refused with its line."""
+    kept = [row for row in chunk if any(value.strip() for value in row)]
+    if any(len(row) != width for row in kept):
+        line, row = next(found for found in _lined(path) if any(found[1]) and len(found[1]) != width)
+        raise InputRefused(
+            Fault(f"{path.name}, line {line}", f"{len(row)} values given", f"give {width}, one for every head")
+        )
+    return kept
+
+
+def _lined(path: Path) -> Iterator[tuple[int, Sequence[str]]]:
+    """Give every row with the line it begins on: the slow look, for naming a fault."""
+    if path.suffix.lower() == ".xlsx":
+        yield from enumerate(first_sheet(path.name, path.read_bytes()), start=1)
+        return
+    with path.open(encoding="utf-8-sig", newline="") as file:
+        reader = csv.reader(file, strict=True)
+        line = 1
+        for row in reader:
+            yield line, row
+            line = reader.line_num + 1
+
+
+def _where(path: Path, columns: Columns, key: tuple[str, ...], place: int) -> str:
+    """Name the line and column in which a combination first stands."""
+    rows = _lined(path)
+    _, heads = next(rows)
+    wanted = itemgetter(*_places(path, heads, columns))
+    named = [*([columns.block] if columns.block else []), *columns.factors, columns.response]
+    line = next(line for line, row in rows if len(row) == len(heads) and wanted(row) == key)
+    return f"{path.name}, line {line}, column {named[place]}"
+
+
+def _refuse_no_level(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]]) -> None:
+    for key in counts:
+        if not any(value.strip() for value in key):
+            continue  # A row that says nothing in any of these columns is counted as left out.
+        for place, level in enumerate(key[:-1]):
+            if not level.strip():
+                raise InputRefused(Fault(_where(path, columns, key, place), "no level given", "give one"))
+
+
+def _step_of(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]]) -> Step:
+    """Read the step off the decimals given: as many places as the longest reading has."""
+    places = 0
+    for text in {key[-1] for key in counts}:
+        whole, point, digits = text.strip().partition(".")
+        if point and digits.isdigit() and whole.lstrip("+-").isdigit():
+            places = max(places, len(digits))
+        elif "e" in text or "E" in text:
+            places = max(places, _places_of_exponent(path, columns, counts, text))
+    return Step.parse(f"1e-{places}")
+
+
+def _places_of_exponent(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]], text: str) -> int:
+    from registry.trials.readings import read_decimal
+
+    try:
+        exponent = read_decimal(text).as_tuple().exponent
+    except ReadingRefused as error:
+        key = next(key for key in counts if key[-1] == text)
+        fault = error.faults[0]
+        raise InputRefused(
+            Fault(_where(path, columns, key, len(key) - 1), fault.given, fault.accepted)
+        ) from None
+    return max(0, -exponent) if isinstance(exponent, int) else 0
+
+
+def _tally(
+    path: Path,
+    columns: Columns,
+    counts: Counter[tuple[str, ...]],
+    levels: list[dict[str, int]],
+    step: Step,
+) -> tuple[dict[tuple[int, ...], Tally], int, int]:
+    """Tally every distinct row as often as it stands in the file."""
+    read = steps_reader(step)
+    known: dict[str, int] = {}
+    sums: dict[tuple[int, ...], list[int]] = {}
+    anchor: int | None = None
+    left_out = 0
+    for key, times in counts.items():
+        text = key[-1]
+        steps = known.get(text)
+        if steps is None:
+            if not text.strip():
+                left_out += times
+                continue
+            steps = known[text] = _steps(path, columns, key, read, step)
+        if anchor is None:
+            anchor = steps
+        distance = steps - anchor
+        cell = tuple([places[level.strip()] for places, level in zip(levels, key, strict=False)])
+        found = sums.get(cell)
+        if found is None:
+            found = sums[cell] = [0, 0, 0]
+        found[0] += times
+        found[1] += distance * times
+        found[2] += distance * distance * times
+    if anchor is None:
+        raise InputRefused(Fault(f"{path.name}, column {columns.response}", "no row has a reading", "give at least one"))
+    return {cell: EMPTY.merge(Tally(*found)) for cell, found in sums.items()}, anchor, left_out
+
+
+def _steps(path: Path, columns: Columns, key: tuple[str, ...], read: Any, step: Step) -> int:
+    steps = read(key[-1])
+    if steps is not None:
+        return int(steps)
+    try:
+        return read_steps(key[-1], step)
+    except ReadingRefused as error:
+        fault = error.faults[0]
+        raise InputRefused(Fault(_where(path, columns, key, len(key) - 1), fault.given, fault.accepted)) from None

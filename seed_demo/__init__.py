@@ -1,0 +1,1 @@
+"""An invented parts depot to look around in."""

@@ -1,0 +1,1 @@
+"""Pages, served by Flask."""

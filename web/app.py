@@ -1,0 +1,44 @@
+"""The application: shell, security and page families put together."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from datetime import UTC, datetime
+from pathlib import Path
+
+from flask import Flask
+from jinja2 import StrictUndefined
+from werkzeug.middleware.proxy_fix import ProxyFix
+
+from registry.services.opening import Database
+from registry.services.settings import Settings
+from web import addresses, assets, figures, forms, pages, people, refusals, studies, times, upkeep
+from web.security import setup as security
+from web.shell import Shell
+
+PAGE_FAMILIES = (upkeep.blueprint, people.blueprint, studies.blueprint)
+
+
+def utc_now() -> datetime:
+    """Say what time it is."""
+    return datetime.now(UTC)
+
+
+def create_app(database: Database, settings: Settings, *, clock: Callable[[], datetime] = utc_now) -> Flask:
+    """Put the application together on an open database; ``clock`` says what time it is."""
+    app = Flask("web", root_path=str(Path(__file__).parent))
+    app.secret_key = settings.secret
+    app.jinja_env.undefined = StrictUndefined
+    app.jinja_env.trim_blocks = app.jinja_env.lstrip_blocks = True
+    app.extensions["weftbook"] = Shell(database, settings, clock)
+    if settings.proxies:
+        # The host a proxy names is not taken over: no page builds an address from it.
+        proxied = ProxyFix(app.wsgi_app, x_for=settings.proxies, x_proto=settings.proxies, x_host=0)
+        app.wsgi_app = proxied  # type: ignore[method-assign]
+    for part in (addresses, assets, figures, forms, pages, times):
+        part.install(app)
+    for make_blueprint in PAGE_FAMILIES:
+        app.register_blueprint(make_blueprint())
+    security.install(app)
+    refusals.install(app)
+    return app

@@ -1,0 +1,5 @@
+"""Signing in and out."""
+
+from web.people.views import blueprint
+
+__all__ = ["blueprint"]

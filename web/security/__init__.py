@@ -1,0 +1,1 @@
+"""Who gets in, what comes with every answer, and what is refused before a view sees it."""
