@@ -12,7 +12,7 @@ from werkzeug.middleware.proxy_fix import ProxyFix
 
 from registry.services.opening import Database
 from registry.services.settings import Settings
-from web import addresses, assets, figures, forms, pages, people, refusals, studies, times, upkeep
+from web import addresses, assets, figures, forms, numbers, pages, people, refusals, studies, times, upkeep
 from web.security import setup as security
 from web.shell import Shell
 
@@ -35,7 +35,7 @@ def create_app(database: Database, settings: Settings, *, clock: Callable[[], da
         # The host a proxy names is not taken over: no page builds an address from it.
         proxied = ProxyFix(app.wsgi_app, x_for=settings.proxies, x_proto=settings.proxies, x_host=0)
         app.wsgi_app = proxied  # type: ignore[method-assign]
-    for part in (addresses, assets, figures, forms, pages, times):
+    for part in (addresses, assets, figures, forms, numbers, pages, times):
         part.install(app)
     for make_blueprint in PAGE_FAMILIES:
         app.register_blueprint(make_blueprint())
