@@ -31,8 +31,6 @@ if TYPE_CHECKING:
 LEAST_PASSWORD = 10
 LONGEST_PASSWORD = 1000
 _ADDRESS = re.compile(r"[^\s@]+@[^\s@]+")
-# Checked when the address is unknown, so that a wrong address takes as long as a wrong password.
-_NOBODY = "a password that nobody has"
 
 
 @dataclass(frozen=True)
@@ -118,23 +116,30 @@ def sign_in(
     hasher = _hasher(hashing)
     with database.read() as session:
         row = person_by_address(session, address)
-        hashed = row.password_hash if row is not None and row.shut_out_at is None else None
-    right = _right(hasher, hashed or hasher.hash(_NOBODY), password)
-    if row is None or hashed is None or not right:
+        open_to = row if row is not None and row.shut_out_at is None else None
+        person = _person(open_to) if open_to else None
+        hashed = open_to.password_hash if open_to else None
+    right = _right(hasher, hashed, password)
+    if person is None or not right:
         raise SignInRefused(
             Fault("sign-in", "this address and password do not belong together", "check both and try again", "password")
         )
     token, expires = secrets.token_urlsafe(32), now + timedelta(hours=hours)
     with database.write() as session:
-        open_session(session, row.id, token, now=now, expires=expires)
-    return SignedIn(token, _person(row), expires)
+        open_session(session, person.id, token, now=now, expires=expires)
+    return SignedIn(token, person, expires)
 
 
-def _right(hasher: PasswordHasher, hashed: str, password: str) -> bool:
+def _right(hasher: PasswordHasher, hashed: str | None, password: str) -> bool:
     from argon2.exceptions import VerificationError
 
+    given = password[:LONGEST_PASSWORD]
+    if hashed is None:
+        # One hash is made here too, so that an unknown address takes as long as a wrong password.
+        hasher.hash(given)
+        return False
     try:
-        return hasher.verify(hashed, password[:LONGEST_PASSWORD])
+        return hasher.verify(hashed, given)
     except VerificationError:
         return False
 
