@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cached_property
 from itertools import combinations
 from math import prod, sqrt
 from typing import Any
@@ -84,7 +85,7 @@ class _Work:
     error: ErrorPolicy
     confidence: float
 
-    @property
+    @cached_property
     def spread(self) -> Spread:
         """The residual mean square that errors are judged by."""
         df = self.division.residual_df

@@ -15,8 +15,10 @@ document.addEventListener("submit", async (event) => {
   event.preventDefault();
   try {
     const fresh = await changed(form, button);
+    const next = fresh.querySelector("[autofocus]");
+    next?.removeAttribute("autofocus");
     form.replaceWith(fresh);
-    fresh.querySelector("[autofocus]")?.focus();
+    next?.focus();
   } catch {
     // Without an answer to show in place, the browser asks for the page itself and shows what comes.
     const choice = document.createElement("input");

@@ -23,14 +23,14 @@ EARLIER_OFFERED = 3
 
 FACTOR_ROLES = choices(
     [
-        ("treatment", "treatment: crossed, its effect is asked for"),
-        ("block", "block: groups trials that are alike"),
-        ("held", "held: kept at one level throughout"),
+        ("treatment", "treatment"),
+        ("block", "block"),
+        ("held", "held at one level"),
     ]
 )
 WANTED = choices([("lower", "lower is better"), ("higher", "higher is better"), ("none", "neither way")])
 KINDS = choices([("measured", "a number"), ("yes_no", "yes or no")])
-PARTS = choices([("primary", "what the study is about"), ("guard", "guard: must not get worse")])
+PARTS = choices([("primary", "primary"), ("guard", "guard")])
 
 
 def blueprint() -> Blueprint:

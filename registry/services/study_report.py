@@ -1,0 +1,269 @@
+"""The report on one study: what it says, how each mean is built, where the variation lies."""
+
+from __future__ import annotations
+
+from dataclasses import asdict, dataclass
+from typing import Any
+
+from registry.analysis.decomposition import decompose
+from registry.analysis.findings import Finding, judge_difference, judge_interaction
+from registry.analysis.results import Decomposition, ErrorPolicy, SumOfSquares
+from registry.analysis.undefined import Undefined
+from registry.errors import Fault, NotFound
+from registry.services.build_up import BuildUp, build_up
+from registry.services.decomposition_record import as_record
+from registry.services.figures import Figure, Interval, figure, interval
+from registry.services.people import Person
+from registry.services.sentences import may_judge, places_of, sentences_of, why_not_judged
+from registry.services.study_card import ResponseLine, StudyCard, open_study_card
+from registry.storage.engine import Database
+from registry.storage.frame import FrameResponse, StudyFrame, fetch_frame
+from registry.storage.tallies import fetch_tallies
+from registry.trials.factors import Factor
+from registry.trials.layouts import Layout
+from registry.trials.tallies import TalliedStudy
+from registry.trials.terms import term_name
+
+
+@dataclass(frozen=True)
+class DivisionLine:
+    """One division's line of a term."""
+
+    ss: Figure
+    ms: Figure
+    f: Figure
+    p: Figure
+
+
+@dataclass(frozen=True)
+class SourceLine:
+    """A term among the sources of variation, by each division."""
+
+    name: str
+    role: str
+    df: int
+    full_df: int
+    equal_weight: DivisionLine
+    sequential: DivisionLine
+    hierarchical: DivisionLine
+
+
+@dataclass(frozen=True)
+class ContrastLine:
+    """A difference between two levels, or how much one changes, with its adjusted interval and finding."""
+
+    name: str
+    estimate: Figure
+    lower: Figure
+    upper: Figure
+    code: str | None
+    words: str
+
+
+@dataclass(frozen=True)
+class CellLine:
+    """One combination as logged."""
+
+    levels: tuple[str, ...]
+    n: int
+    mean: Figure
+    sd: Figure
+
+
+@dataclass(frozen=True)
+class Findings:
+    """Everything a page shows of one response once there is a reading."""
+
+    table: BuildUp
+    sources: tuple[SourceLine, ...]
+    residual: DivisionLine
+    residual_df: int
+    residual_sd: Figure
+    total_df: int
+    total_ss: float
+    r_squared: Figure
+    balance: str
+    error: str
+    differences: tuple[ContrastLine, ...]
+    changes: tuple[ContrastLine, ...]
+    cells: tuple[CellLine, ...]
+    as_logged: Interval
+    notes: tuple[str, ...]
+    record: dict[str, Any]
+
+
+@dataclass(frozen=True)
+class StudyReport:
+    """One study, one response: sentences first, then what is behind them; ``findings`` is absent before a reading."""
+
+    card: StudyCard
+    response: ResponseLine
+    places: int
+    sentences: tuple[str, ...]
+    judged: bool
+    why_not_judged: str
+    findings: Findings | None
+
+
+def study_report(
+    database: Database,
+    person: Person,
+    study_id: int,
+    *,
+    response: str | None = None,
+    row: str | None = None,
+    column: str | None = None,
+) -> StudyReport:
+    """Report on one response of a study; the first one when none is named.
+
+    Tallies and the study's revision are read in one transaction, so they belong together.
+    """
+    with database.read() as session:
+        card = open_study_card(session, person, study_id)
+        frame = fetch_frame(session, study_id)
+        chosen = _chosen(frame, response)
+        tallies = fetch_tallies(session, study_id, chosen.response_id)
+    line = next(line for line in card.responses if line.name == chosen.name)
+    judged = may_judge(card)
+    tallied = tallied_study(frame, chosen, tallies)
+    if not any(tally.n for tally in tallied.tallies.values()):
+        said = (f"No reading of {chosen.name} counts yet.",)
+        return StudyReport(card, line, places_of(line), said, judged, why_not_judged(card), None)
+    result = decompose(tallied, error=error_policy(card))
+    return StudyReport(
+        card=card,
+        response=line,
+        places=places_of(line),
+        sentences=tuple(sentences_of(card, line, result)),
+        judged=judged,
+        why_not_judged=why_not_judged(card),
+        findings=_findings(card, line, result, row=row, column=column, judged=judged),
+    )
+
+
+def _chosen(frame: StudyFrame, name: str | None) -> FrameResponse:
+    if name is None:
+        return frame.responses[0]
+    found = frame.response(name)
+    if found is None:
+        names = ", ".join(response.name for response in frame.responses)
+        raise NotFound(Fault("response", f"this study has no response {name!r}", f"its responses are {names}"))
+    return found
+
+
+def error_policy(card: StudyCard) -> ErrorPolicy:
+    """The study's one spread policy, as the analysis calls it; shared until a plan says otherwise."""
+    return "per-cell" if card.spread == "own" and card.block is None else "pooled"
+
+
+def tallied_study(frame: StudyFrame, response: FrameResponse, tallies: dict[int, Any]) -> TalliedStudy:
+    """Arrange stored tallies as an analysis takes them: by level places, the block's in front."""
+    factors = tuple(Factor(factor.name, factor.levels) for factor in frame.treatments)
+    block = Factor(frame.block.name, frame.block.levels) if frame.block else None
+    ranks = frame.ranks
+    # A cell lists its ranks in the order of the chosen factors, where the block is the last one.
+    keyed = {
+        ((ranks[cell][-1], *ranks[cell][:-1]) if block else ranks[cell]): tally for cell, tally in tallies.items()
+    }
+    return TalliedStudy(Layout(factors, block), response.step.fraction, response.anchor or 0, keyed)
+
+
+def _findings(
+    card: StudyCard, line: ResponseLine, result: Decomposition, *, row: str | None, column: str | None, judged: bool
+) -> Findings:
+    margin = float(line.margin) if line.margin else None
+    differences = tuple(
+        _contrast(
+            f"{pair.factor}: {pair.to_level} \N{MINUS SIGN} {pair.from_level}",
+            judge_difference(result, pair, margin=margin),
+            judged,
+        )
+        for pair in result.comparisons
+    )
+    changes = tuple(
+        _contrast(
+            f"{term_name(each.factors)}: ({each.levels[0][1]} \N{MINUS SIGN} {each.levels[0][0]}) at"
+            f" {each.levels[1][1]} less at {each.levels[1][0]}",
+            judge_interaction(result, each, margin=margin),
+            judged,
+        )
+        for each in result.interactions
+    )
+    return Findings(
+        table=build_up(result, row=row, column=column),
+        sources=tuple(
+            SourceLine(
+                term_name(term.factors),
+                term.role,
+                term.df,
+                term.full_df,
+                _line(term.equal_weight),
+                _line(term.sequential),
+                _line(term.hierarchical),
+            )
+            for term in result.terms
+        ),
+        residual=DivisionLine(
+            figure(result.residual.ss), figure(result.residual.ms), Figure(None), Figure(None)
+        ),
+        residual_df=result.residual.df,
+        residual_sd=figure(result.residual.sd),
+        total_df=result.total.df,
+        total_ss=result.total.ss,
+        r_squared=figure(result.r_squared),
+        balance=result.balance,
+        error=result.error,
+        differences=differences,
+        changes=changes,
+        cells=tuple(
+            CellLine(tuple(cell.levels.values()), cell.n, figure(cell.mean), figure(cell.sd)) for cell in result.cells
+        ),
+        as_logged=interval(result.as_logged),
+        notes=result.notes,
+        record=as_record(result, response=line.name, step=line.step),
+    )
+
+
+def _contrast(name: str, finding: Finding, judged: bool) -> ContrastLine:
+    known = judged and not isinstance(finding.code, Undefined)
+    return ContrastLine(
+        name=name,
+        estimate=figure(finding.estimate),
+        lower=figure(finding.lower),
+        upper=figure(finding.upper),
+        code=finding.code if known and not isinstance(finding.code, Undefined) else None,
+        words=finding.words if known else "",
+    )
+
+
+def _line(line: SumOfSquares) -> DivisionLine:
+    return DivisionLine(figure(line.ss), figure(line.ms), figure(line.f), figure(line.p))
+
+
+def report_record(report: StudyReport) -> dict[str, Any]:
+    """Write a report as its JSON twin: the decomposition's record, with the study it belongs to."""
+    card = report.card
+    record: dict[str, Any] = dict(report.findings.record) if report.findings else {"response": report.response.name}
+    record["study"] = {
+        "id": card.id,
+        "title": card.title,
+        "series": card.series_name,
+        "site": card.site,
+        "status": card.status,
+        "close_reason": card.close_reason,
+        "spread": card.spread,
+        "revision": card.revision,
+        "logged": card.logged,
+        "set_aside": card.set_aside,
+        "planned": card.plan.planned if card.plan else None,
+        "factors": [asdict(factor) for factor in card.factors],
+        "block": asdict(card.block) if card.block else None,
+        "held": [asdict(factor) for factor in card.held],
+        "unit": report.response.unit,
+        "margin": report.response.margin,
+    }
+    record["sentences"] = list(report.sentences)
+    if report.findings:
+        record["differences"] = [asdict(line) for line in report.findings.differences]
+        record["changes"] = [asdict(line) for line in report.findings.changes]
+    return record
