@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import gzip
 import hashlib
+import re
 from functools import cache
 from importlib.metadata import distribution
 from pathlib import Path
@@ -13,6 +14,7 @@ from flask import Flask, Response, abort, request, send_file, url_for
 from web.marks import public
 
 FOR_EVER = "public, max-age=31536000, immutable"
+_OWN_STYLE = re.compile(r'document\.getElementById\("([0-9a-f]{64})"\)')
 CHART_SCRIPT = "plotly/package_data/plotly.min.js"
 
 
@@ -21,6 +23,7 @@ def install(app: Flask) -> None:
     app.add_url_rule("/static/plotly-<version>.min.js", "chart_script", chart_script)
     app.add_template_global(asset)
     app.add_template_global(chart_script_address)
+    app.add_template_global(chart_style_ids)
 
 
 def asset(name: str) -> str:
@@ -44,6 +47,17 @@ def keep_static_files(response: Response) -> None:
 def chart_script_address() -> str:
     """Give the address of the chart script."""
     return url_for("chart_script", version=distribution("plotly").version)
+
+
+@cache
+def chart_style_ids() -> tuple[str, ...]:
+    """Give the ids of style elements that the chart script adds by itself unless the page has them.
+
+    They hold the looks of its maps, which no page of ours draws, and the content security
+    policy refuses them; an element with the same id keeps the script from trying.
+    """
+    script = _chart_script_path().read_text(encoding="utf-8")
+    return tuple(dict.fromkeys(_OWN_STYLE.findall(script)))
 
 
 @public

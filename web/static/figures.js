@@ -46,7 +46,7 @@ function ownLook(layout, styles) {
     font: { family: styles.getPropertyValue("--sans").trim(), size: 14, color: "var(--ink)" },
     hoverlabel: { bgcolor: "var(--linen-light)", bordercolor: "var(--edge)", font: { color: "var(--ink)" } },
     legend: { orientation: "h", yanchor: "bottom", y: 1.02, x: 0 },
-    margin: { l: 16, r: 16, t: 24, b: 16 },
+    margin: { l: 16, r: 16, t: 24, b: 24 },
     dragmode: false,
     xaxis: AXIS,
     yaxis: AXIS,
