@@ -92,9 +92,9 @@ def somebody(database: Database, address: str, *, keeper: bool = False) -> Perso
     return add_person(database, name=name, address=address, password=PASSWORD, keeper=keeper, now=NOW, hashing=CHEAP)
 
 
-def somebody_in(database: Database, by: Person, series_id: int, *, role: Role) -> Person:
-    """Add somebody with a role in a series; the address starts with the role."""
-    person = somebody(database, f"{role}@example.org")
+def somebody_in(database: Database, by: Person, series_id: int, *, role: Role, address: str = "") -> Person:
+    """Add somebody with a role in a series; unless given, the address starts with the role."""
+    person = somebody(database, address or f"{role}@example.org")
     grant(database, by, series_id, address=person.address, role=role, now=NOW)
     return person
 

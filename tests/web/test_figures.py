@@ -11,7 +11,11 @@ from hypothesis import strategies as st
 from web.figures import Figure, json_block, plain
 
 
-@given(st.recursive(st.text() | st.integers() | st.none(), lambda inner: st.lists(inner) | st.dictionaries(st.text(), inner)))
+@given(
+    st.recursive(
+        st.text() | st.integers() | st.none(), lambda inner: st.lists(inner) | st.dictionaries(st.text(), inner)
+    )
+)
 def test_a_data_block_reads_back_as_written_and_cannot_be_ended_from_inside(content: object) -> None:
     block = str(json_block(content))
 

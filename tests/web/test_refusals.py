@@ -39,7 +39,7 @@ def test_every_error_class_has_a_status() -> None:
     assert {getattr(errors, name) for name in errors.__all__} - {Fault, RegistryError} == set(STATUS_OF)
 
 
-@pytest.mark.parametrize("kind", sorted(STATUS_OF, key=lambda kind: kind.__name__))
+@pytest.mark.parametrize("kind", sorted(STATUS_OF, key=str))
 def test_an_error_is_told_as_a_page_and_as_problem_details(app: Flask, kind: type[RegistryError]) -> None:
     fault = Fault("line 7, column minutes", "'7,1' given", "write 7.1 with a point", "minutes")
     error = errors.OffGrid(fault, offered="7.1") if kind is errors.OffGrid else kind(fault)

@@ -1,0 +1,1 @@
+"""Contracts between parts that no type checker sees."""

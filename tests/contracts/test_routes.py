@@ -1,0 +1,200 @@
+"""Every route, for every role: who gets what. A route that is not in the table fails here.
+
+One line a route and method: the address, then the status for each role, from somebody not
+signed in to a keeper of the registry. ``{running}`` and the like stand for what ``World``
+holds. What a form sends stands in ``FORMS``. Where a role is refused, it is refused before
+anything of the study is shown: 404 for a stranger, who may not even know that it exists, and
+403 for a role that is too small.
+"""
+
+from __future__ import annotations
+
+import sqlite3
+from collections.abc import Callable, Mapping
+from dataclasses import asdict, dataclass
+from pathlib import Path
+
+import pytest
+from flask import Flask
+
+from registry.services.access import ROLES
+from registry.services.opening import Database, open_registry
+from tests.support.studies import MINUTES, WRONG_PICK, a_study, another_study
+from tests.support.visitors import Visitor, a_visitor, an_app, somebody, somebody_in
+
+VISITORS = ("signed_out", "stranger", "viewer", "logger", "analyst", "keeper", "registry_keeper")
+ADDRESS_OF: dict[str, str] = {
+    "signed_out": "",
+    "stranger": "stranger@example.org",
+    "viewer": "viewer@example.org",
+    "logger": "logger@example.org",
+    "analyst": "analyst@example.org",
+    "keeper": "series-keeper@example.org",
+    "registry_keeper": "keeper@example.org",
+}
+
+TABLE = """
+                                                                 out stranger viewer logger analyst keeper registry
+static                  GET  /static/weft.css                    200 200      200    200    200     200    200
+chart_script            GET  /static/plotly-0.min.js             404 404      404    404    404     404    404
+upkeep.healthz          GET  /healthz                            200 200      200    200    200     200    200
+people.sign_in_form     GET  /sign-in                            200 303      303    303    303     303    303
+people.sign_in_try      POST /sign-in                            401 401      401    401    401     401    401
+people.sign_out_now     POST /sign-out                           401 303      303    303    303     303    303
+studies.home            GET  /                                   303 200      200    200    200     200    200
+studies.new_series_form GET  /series/new                         303 403      403    403    403     403    200
+studies.new_series_try  POST /series/new                         401 403      403    403    403     403    303
+studies.new_study_form  GET  /series/{series}/studies/new        303 404      403    403    200     200    200
+studies.new_study_try   POST /series/{series}/studies/new        401 404      403    403    303     303    303
+"""
+
+FORMS: Mapping[str, Mapping[str, str]] = {
+    "people.sign_in_try": {"address": "nobody@example.org", "password": "wrong"},
+    "studies.new_series_try": {"name": "Packing"},
+    "studies.new_study_try": {
+        "title": "Next",
+        "site": "Osierholm",
+        "time_zone": "Europe/Copenhagen",
+        "factors-0-name": "walk",
+        "factors-0-role": "treatment",
+        "factors-0-levels": "serpentine\nreturn",
+        "responses-0-name": "minutes",
+        "responses-0-unit": "min",
+        "responses-0-step": "0.1",
+        "responses-0-wanted": "lower",
+        "responses-0-kind": "measured",
+        "responses-0-part": "primary",
+    },
+}
+
+
+@dataclass(frozen=True)
+class Line:
+    """One line of the table."""
+
+    endpoint: str
+    method: str
+    address: str
+    statuses: tuple[int, ...]
+
+
+@dataclass(frozen=True)
+class World:
+    """What the addresses of the table are filled in with."""
+
+    series: int
+    running: int
+    planned: int
+
+
+LINES = tuple(
+    Line(endpoint, method, address, tuple(int(status) for status in statuses))
+    for endpoint, method, address, *statuses in (line.split() for line in TABLE.strip().splitlines()[1:])
+)
+POSTS = tuple(line for line in LINES if line.method == "POST")
+
+
+def _fill(database: Database) -> World:
+    """Make one person of each role, a running study with a trial, and a planned one."""
+    place = a_study(database, responses=(MINUTES, WRONG_PICK))
+    place.log({"walk": "return", "start": "back"}, {"minutes": "7.1"}, key=1)
+    planned = another_study(database, place.keeper, place.series_id, title="Planned", started=False)
+    somebody(database, ADDRESS_OF["stranger"])
+    for role in ROLES:
+        somebody_in(database, place.keeper, place.series_id, role=role, address=ADDRESS_OF[role])
+    return World(place.series_id, place.study_id, planned)
+
+
+@pytest.fixture(scope="module")
+def filled(templates: Callable[[str], str], tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, World]:
+    """Fill one registry that is copied for each case, so that no case sees what another did."""
+    path = tmp_path_factory.mktemp("routes") / "filled.db"
+    _copy(Path(templates("sqlite").removeprefix("sqlite:///")), path)
+    database = open_registry(f"sqlite:///{path}")
+    world = _fill(database)
+    database.dispose()
+    return path, world
+
+
+def _copy(source: Path, target: Path) -> None:
+    one, other = sqlite3.connect(source), sqlite3.connect(target)
+    one.backup(other)
+    one.close()
+    other.close()
+
+
+@pytest.fixture
+def app(filled: tuple[Path, World], tmp_path: Path):  # type: ignore[no-untyped-def]
+    """Give an application on a copy of the filled registry."""
+    _copy(filled[0], tmp_path / "case.db")
+    database = open_registry(f"sqlite:///{tmp_path / 'case.db'}")
+    yield an_app(database)
+    database.dispose()
+
+
+def _ask(visitor: Visitor, line: Line, world: World) -> int:
+    path = line.address.format(**asdict(world))
+    if line.method == "GET":
+        return visitor.get(path).status_code
+    return visitor.post(path, FORMS.get(line.endpoint, {})).status_code
+
+
+@pytest.mark.parametrize("who", VISITORS)
+@pytest.mark.parametrize("line", LINES, ids=lambda line: f"{line.method} {line.endpoint}")
+def test_every_route_answers_every_role_as_the_table_says(
+    app: Flask, filled: tuple[Path, World], line: Line, who: str
+) -> None:
+    visitor = a_visitor(app, ADDRESS_OF[who])
+
+    assert _ask(visitor, line, filled[1]) == line.statuses[VISITORS.index(who)]
+
+
+def test_the_table_holds_every_route_and_method(app: Flask) -> None:
+    routes = {
+        (rule.endpoint, method)
+        for rule in app.url_map.iter_rules()
+        for method in (rule.methods or set()) - {"HEAD", "OPTIONS"}
+    }
+
+    assert {(line.endpoint, line.method) for line in LINES} == routes
+    assert all(len(line.statuses) == len(VISITORS) for line in LINES)
+
+
+def test_every_address_of_the_table_leads_to_its_endpoint(app: Flask, filled: tuple[Path, World]) -> None:
+    adapter = app.url_map.bind("localhost")
+    for line in LINES:
+        found, _ = adapter.match(line.address.format(**asdict(filled[1])), method=line.method)
+        assert found == line.endpoint
+
+
+@pytest.mark.parametrize("line", POSTS, ids=lambda line: line.endpoint)
+def test_a_form_without_the_mark_of_the_site_is_refused_everywhere(
+    app: Flask, filled: tuple[Path, World], line: Line
+) -> None:
+    visitor = a_visitor(app, ADDRESS_OF["registry_keeper"])
+    path = line.address.format(**asdict(filled[1]))
+
+    without = visitor.client.post(path, data=FORMS.get(line.endpoint, {}), buffered=True)
+    forged = visitor.client.post(path, data={**FORMS.get(line.endpoint, {}), "csrf_token": "forged"}, buffered=True)
+
+    assert (without.status_code, forged.status_code) == (400, 400)
+
+
+def test_looking_at_every_page_changes_nothing_in_the_record(
+    app: Flask, filled: tuple[Path, World], tmp_path: Path
+) -> None:
+    visitor = a_visitor(app, ADDRESS_OF["registry_keeper"])
+    before = _dump(tmp_path / "case.db")
+
+    for line in LINES:
+        if line.method == "GET":
+            visitor.get(line.address.format(**asdict(filled[1])))
+
+    assert _dump(tmp_path / "case.db") == before
+
+
+def _dump(path: Path) -> list[str]:
+    connection = sqlite3.connect(path)
+    lines = list(connection.iterdump())
+    connection.close()
+    return lines
