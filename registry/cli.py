@@ -70,9 +70,7 @@ def _decompose(wish: argparse.Namespace) -> int:
     from registry.services.decompose_file import FileWish, decompose_file
 
     answer = decompose_file(
-        FileWish(
-            wish.file, wish.response, tuple(wish.factor), wish.block, wish.step, wish.error, wish.confidence
-        )
+        FileWish(wish.file, wish.response, tuple(wish.factor), wish.block, wish.step, wish.error, wish.confidence)
     )
     if wish.json:
         json.dump(answer.record(), sys.stdout, ensure_ascii=False, allow_nan=False, indent=1)

@@ -12,11 +12,36 @@ from werkzeug.middleware.proxy_fix import ProxyFix
 
 from registry.services.opening import Database
 from registry.services.settings import Settings
-from web import addresses, assets, figures, forms, numbers, pages, people, refusals, studies, times, upkeep
+from web import (
+    addresses,
+    assets,
+    figures,
+    forms,
+    imports,
+    log,
+    numbers,
+    pages,
+    people,
+    quantities,
+    refusals,
+    studies,
+    study,
+    times,
+    trials,
+    upkeep,
+)
 from web.security import setup as security
 from web.shell import Shell
 
-PAGE_FAMILIES = (upkeep.blueprint, people.blueprint, studies.blueprint)
+PAGE_FAMILIES = (
+    upkeep.blueprint,
+    people.blueprint,
+    studies.blueprint,
+    study.blueprint,
+    trials.blueprint,
+    log.blueprint,
+    imports.blueprint,
+)
 
 
 def utc_now() -> datetime:
@@ -35,7 +60,7 @@ def create_app(database: Database, settings: Settings, *, clock: Callable[[], da
         # The host a proxy names is not taken over: no page builds an address from it.
         proxied = ProxyFix(app.wsgi_app, x_for=settings.proxies, x_proto=settings.proxies, x_host=0)
         app.wsgi_app = proxied  # type: ignore[method-assign]
-    for part in (addresses, assets, figures, forms, numbers, pages, times):
+    for part in (addresses, assets, figures, forms, numbers, pages, quantities, times):
         part.install(app)
     for make_blueprint in PAGE_FAMILIES:
         app.register_blueprint(make_blueprint())

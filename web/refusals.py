@@ -56,6 +56,14 @@ EXPLANATION_OF: dict[int, str] = {
 
 
 @dataclass(frozen=True)
+class KeptForm:
+    """A form that came after its sign-in had run out, ready to be sent once more."""
+
+    path: str
+    fields: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True)
 class ErrorPage(Page):
     """What is shown when a page cannot be."""
 
@@ -66,6 +74,7 @@ class ErrorPage(Page):
     explanation: str = field(metadata={"help": "what to do, where no fault says it"})
     reference: str = field(metadata={"help": "the id under which an unexpected error was logged, or nothing"})
     offer_sign_in: bool = field(metadata={"help": "whether signing in would help"})
+    kept: KeptForm | None = field(metadata={"help": "the form that was sent, where signing in would let it through"})
 
 
 def install(app: Flask) -> None:
@@ -138,8 +147,17 @@ def answer(status: int, *, faults: Sequence[Fault] = (), explanation: str = "", 
         explanation=explanation,
         reference=reference,
         offer_sign_in=status == HTTPStatus.UNAUTHORIZED,
+        kept=_kept_form() if status == HTTPStatus.UNAUTHORIZED else None,
     )
     return render_page(page, status=status)
+
+
+def _kept_form() -> KeptForm | None:
+    """Keep what was typed, so that it can be sent again after signing in; a file cannot be kept."""
+    if request.method != "POST" or request.files:
+        return None
+    typed = tuple((name, value) for name, value in request.form.items(multi=True) if name != "csrf_token")
+    return KeptForm(request.full_path.rstrip("?"), typed)
 
 
 def _problem(status: int, heading: str, faults: Sequence[Fault], *, explanation: str, reference: str) -> Response:

@@ -96,7 +96,9 @@ def _count_rows(path: Path, columns: Columns) -> Counter[tuple[str, ...]]:
                 chunk = _kept_rows(path, chunk, width)
             counts.update(map(wanted, chunk))
     except FileNotFoundError:
-        raise InputRefused(Fault(str(path), "there is no such file", "give the path of a CSV file or workbook")) from None
+        raise InputRefused(
+            Fault(str(path), "there is no such file", "give the path of a CSV file or workbook")
+        ) from None
     except (IsADirectoryError, PermissionError) as error:
         raise InputRefused(Fault(str(path), str(error.strerror), "give a file that can be read")) from None
     except UnicodeDecodeError as error:
@@ -198,9 +200,7 @@ def _places_of_exponent(path: Path, columns: Columns, counts: Iterable[tuple[str
     except ReadingRefused as error:
         key = next(key for key in counts if key[-1] == text)
         fault = error.faults[0]
-        raise InputRefused(
-            Fault(_where(path, columns, key, len(key) - 1), fault.given, fault.accepted)
-        ) from None
+        raise InputRefused(Fault(_where(path, columns, key, len(key) - 1), fault.given, fault.accepted)) from None
     return max(0, -exponent) if isinstance(exponent, int) else 0
 
 
@@ -236,7 +236,9 @@ def _tally(
         found[1] += distance * times
         found[2] += distance * distance * times
     if anchor is None:
-        raise InputRefused(Fault(f"{path.name}, column {columns.response}", "no row has a reading", "give at least one"))
+        raise InputRefused(
+            Fault(f"{path.name}, column {columns.response}", "no row has a reading", "give at least one")
+        )
     return {cell: EMPTY.merge(Tally(*found)) for cell, found in sums.items()}, anchor, left_out
 
 

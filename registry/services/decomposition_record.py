@@ -15,9 +15,7 @@ from registry.analysis.undefined import Number, Undefined
 FORMAT = "weftbook.decomposition/1"
 
 
-def as_record(
-    result: Decomposition, *, response: str, step: str, notes: tuple[str, ...] = ()
-) -> dict[str, Any]:
+def as_record(result: Decomposition, *, response: str, step: str, notes: tuple[str, ...] = ()) -> dict[str, Any]:
     """Write a decomposition as plain values; what is undefined is null, its reason among the notes."""
     return {
         "format": FORMAT,

@@ -140,9 +140,10 @@ def _table(heads: Sequence[str], rows: Sequence[Sequence[str]]) -> Iterator[str]
 
 
 def _is_figure(text: str) -> bool:
-    return text in ("", "-") or text.lstrip("+-<. ").replace(".", "", 1).replace("e", "").replace("+", "").replace(
-        "-", ""
-    ).isdigit()
+    return (
+        text in ("", "-")
+        or text.lstrip("+-<. ").replace(".", "", 1).replace("e", "").replace("+", "").replace("-", "").isdigit()
+    )
 
 
 def _between(value: Estimate) -> str:

@@ -33,6 +33,4 @@ def figure(number: Number) -> Figure:
 
 def interval(estimate: Estimate) -> Interval:
     """Turn an estimate of the analysis into one for a page."""
-    return Interval(
-        figure(estimate.estimate), figure(estimate.se), figure(estimate.lower), figure(estimate.upper)
-    )
+    return Interval(figure(estimate.estimate), figure(estimate.se), figure(estimate.lower), figure(estimate.upper))

@@ -61,9 +61,7 @@ def _size(card: StudyCard, response: ResponseLine, result: Decomposition) -> str
 
 def _findings(response: ResponseLine, result: Decomposition) -> Iterator[str]:
     margin = float(response.margin) if response.margin else None
-    differences = [
-        (judge_difference(result, pair, margin=margin), pair) for pair in result.comparisons
-    ]
+    differences = [(judge_difference(result, pair, margin=margin), pair) for pair in result.comparisons]
     told = [(finding, pair) for finding, pair in differences if finding.code in ("act", "real")]
     told.sort(key=lambda each: -abs(_value(each[0].estimate)))
     for finding, pair in told[:MOST_SAID]:

@@ -8,7 +8,7 @@ from typing import Any
 from registry.analysis.decomposition import decompose
 from registry.analysis.findings import Finding, judge_difference, judge_interaction
 from registry.analysis.results import Decomposition, ErrorPolicy, SumOfSquares
-from registry.analysis.undefined import Undefined
+from registry.analysis.undefined import Number, Undefined
 from registry.errors import Fault, NotFound
 from registry.services.build_up import BuildUp, build_up
 from registry.services.decomposition_record import as_record
@@ -80,8 +80,8 @@ class Findings:
     residual_df: int
     residual_sd: Figure
     total_df: int
-    total_ss: float
-    r_squared: Figure
+    total: Figure
+    share: Figure
     balance: str
     error: str
     differences: tuple[ContrastLine, ...]
@@ -162,9 +162,7 @@ def tallied_study(frame: StudyFrame, response: FrameResponse, tallies: dict[int,
     block = Factor(frame.block.name, frame.block.levels) if frame.block else None
     ranks = frame.ranks
     # A cell lists its ranks in the order of the chosen factors, where the block is the last one.
-    keyed = {
-        ((ranks[cell][-1], *ranks[cell][:-1]) if block else ranks[cell]): tally for cell, tally in tallies.items()
-    }
+    keyed = {((ranks[cell][-1], *ranks[cell][:-1]) if block else ranks[cell]): tally for cell, tally in tallies.items()}
     return TalliedStudy(Layout(factors, block), response.step.fraction, response.anchor or 0, keyed)
 
 
@@ -203,14 +201,12 @@ def _findings(
             )
             for term in result.terms
         ),
-        residual=DivisionLine(
-            figure(result.residual.ss), figure(result.residual.ms), Figure(None), Figure(None)
-        ),
+        residual=DivisionLine(figure(result.residual.ss), figure(result.residual.ms), Figure(None), Figure(None)),
         residual_df=result.residual.df,
         residual_sd=figure(result.residual.sd),
         total_df=result.total.df,
-        total_ss=result.total.ss,
-        r_squared=figure(result.r_squared),
+        total=Figure(result.total.ss),
+        share=_percent(result.r_squared),
         balance=result.balance,
         error=result.error,
         differences=differences,
@@ -234,6 +230,10 @@ def _contrast(name: str, finding: Finding, judged: bool) -> ContrastLine:
         code=finding.code if known and not isinstance(finding.code, Undefined) else None,
         words=finding.words if known else "",
     )
+
+
+def _percent(share: Number) -> Figure:
+    return Figure(None, share.reason) if isinstance(share, Undefined) else Figure(100 * share)
 
 
 def _line(line: SumOfSquares) -> DivisionLine:

@@ -38,7 +38,7 @@ def _turn_away() -> AnyResponse:
         Fault(
             "sign-in",
             "your sign-in has run out, and nothing was changed",
-            "sign in again in another window, then come back here and send this once more",
+            "sign in again in another window, then come back here and send it once more",
         )
     )
 

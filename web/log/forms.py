@@ -1,0 +1,62 @@
+"""The form of one trial, as typed."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime
+from uuid import uuid4
+from zoneinfo import ZoneInfo
+
+from registry.errors import Fault, InputRefused
+from registry.services.study_card import FactorLine, StudyCard
+from registry.services.trial_log import TrialEntry
+
+
+@dataclass(frozen=True)
+class TrialForm:
+    """One trial as typed; the key is made with the form, so that sending it twice logs one trial."""
+
+    key: str
+    levels: Mapping[str, str]
+    readings: Mapping[str, str]
+    happened_at: str
+    note: str
+
+    @classmethod
+    def first(cls, card: StudyCard, *, block: str) -> TrialForm:
+        """Start under a fresh key, with the block that was logged last."""
+        levels = {card.block.name: block} if card.block else {}
+        return cls(str(uuid4()), levels, {}, "", "")
+
+    @classmethod
+    def read(cls, sent: Mapping[str, str], card: StudyCard) -> TrialForm:
+        """Read the form as it was typed."""
+        return cls(
+            key=sent.get("key", ""),
+            levels={factor.name: sent.get(f"levels-{factor.name}", "") for factor in factors_to_choose(card)},
+            readings={line.name: sent.get(f"readings-{line.name}", "") for line in card.responses},
+            happened_at=sent.get("happened_at", ""),
+            note=sent.get("note", ""),
+        )
+
+    def entry(self, card: StudyCard) -> TrialEntry:
+        """Hand the form on; a time without zone is the site's own clock."""
+        return TrialEntry(self.key, self.levels, self.readings, self._moment(card), None, self.note)
+
+    def _moment(self, card: StudyCard) -> datetime | None:
+        text = self.happened_at.strip()
+        if not text:
+            return None
+        try:
+            moment = datetime.fromisoformat(text)
+        except ValueError:
+            raise InputRefused(
+                Fault("time", f"{text!r} given", "write it as 2026-03-02 14:05, or leave it empty", "happened_at")
+            ) from None
+        return moment if moment.tzinfo else moment.replace(tzinfo=ZoneInfo(card.time_zone))
+
+
+def factors_to_choose(card: StudyCard) -> tuple[FactorLine, ...]:
+    """List the factors that a trial has a level of, the block first, because it changes least often."""
+    return (*([card.block] if card.block else []), *card.factors)
