@@ -81,12 +81,12 @@ def study_ids(session: Session) -> list[int]:
 
 
 def studies_of(session: Session, series_ids: Sequence[int]) -> list[Study]:
-    """List the studies of some series in order of time."""
+    """List the studies of some series in order of time; what is only planned comes last."""
     return list(
         session.scalars(
             select(Study)
             .where(Study.series_id.in_(series_ids))
-            .order_by(func.coalesce(Study.started_at, Study.created_at), Study.id)
+            .order_by(Study.status == "planned", func.coalesce(Study.started_at, Study.created_at), Study.id)
         )
     )
 
