@@ -12,6 +12,7 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Callable, Mapping
 from dataclasses import asdict, dataclass
+from io import BytesIO
 from pathlib import Path
 
 import pytest
@@ -19,7 +20,8 @@ from flask import Flask
 
 from registry.services.access import ROLES
 from registry.services.opening import Database, open_registry
-from tests.support.studies import MINUTES, WRONG_PICK, a_study, another_study
+from registry.services.trial_import import read_upload
+from tests.support.studies import MINUTES, NOW, WRONG_PICK, a_study, another_study
 from tests.support.visitors import Visitor, a_visitor, an_app, somebody, somebody_in
 
 VISITORS = ("signed_out", "stranger", "viewer", "logger", "analyst", "keeper", "registry_keeper")
@@ -46,9 +48,31 @@ studies.new_series_form GET  /series/new                         303 403      40
 studies.new_series_try  POST /series/new                         401 403      403    403    403     403    303
 studies.new_study_form  GET  /series/{series}/studies/new        303 404      403    403    200     200    200
 studies.new_study_try   POST /series/{series}/studies/new        401 404      403    403    303     303    303
+study.show              GET  /studies/{running}                  303 404      200    200    200     200    200
+study.record            GET  /studies/{running}/record.json      303 404      200    200    200     200    200
+study.history           GET  /studies/{running}/history          303 404      200    200    200     200    200
+study.plan              GET  /studies/{planned}/plan             303 404      200    200    200     200    200
+study.plan_locked       POST /studies/{planned}/plan             401 404      403    403    303     303    303
+study.started           POST /studies/{planned}/start            401 404      403    403    303     303    303
+study.end               GET  /studies/{running}/end              303 404      403    403    200     200    200
+study.ended             POST /studies/{running}/end              401 404      403    403    303     303    303
+study.step              GET  /studies/{running}/step             303 404      403    403    200     200    200
+study.step_taken        POST /studies/{running}/step             401 404      403    403    303     303    303
+trials.every            GET  /studies/{running}/trials           303 404      200    200    200     200    200
+trials.one              GET  /studies/{running}/trials/1         303 404      200    200    200     200    200
+trials.corrected        POST /studies/{running}/trials/1/correct 401 404      403    403    303     303    303
+trials.kept             POST /studies/{running}/trials/1/keep    401 404      403    403    303     303    303
+log.sheet               GET  /studies/{running}/log              303 404      403    200    200     200    200
+log.logged              POST /studies/{running}/log              401 404      403    303    303     303    303
+imports.upload          GET  /studies/{running}/import           303 404      403    403    200     200    200
+imports.uploaded        POST /studies/{running}/import           401 404      403    403    303     303    303
+imports.look            GET  /studies/{running}/import/{job}     303 404      403    403    200     200    200
+imports.decided         POST /studies/{running}/import/{job}     401 404      403    403    303     303    303
 """
 
-FORMS: Mapping[str, Mapping[str, str]] = {
+FILE = b"walk,start,minutes\nreturn,back,7.1\n"
+
+FORMS: Mapping[str, Mapping[str, str | bytes]] = {
     "people.sign_in_try": {"address": "nobody@example.org", "password": "wrong"},
     "studies.new_series_try": {"name": "Packing"},
     "studies.new_study_try": {
@@ -65,6 +89,19 @@ FORMS: Mapping[str, Mapping[str, str]] = {
         "responses-0-kind": "measured",
         "responses-0-part": "primary",
     },
+    "study.plan_locked": {"per_cell": "4", "spread": "", "looks": "closed", "margins-minutes": "0.8"},
+    "study.ended": {"reason": "early", "note": "enough seen"},
+    "study.step_taken": {"response": "minutes", "step": "0.05", "reason": "a finer watch"},
+    "trials.corrected": {"response": "minutes", "text": "7.2", "reason": "misread"},
+    "trials.kept": {"turn": "set_aside", "what": "trial", "keep_reason": "the lift stood still"},
+    "log.logged": {
+        "key": "5a1f0a70-9d1f-4a40-8d0e-0f6e4b1c2d3e",
+        "levels-walk": "return",
+        "levels-start": "back",
+        "readings-minutes": "7.3",
+    },
+    "imports.uploaded": {"file": FILE},
+    "imports.decided": {"drop": "yes"},
 }
 
 
@@ -85,6 +122,7 @@ class World:
     series: int
     running: int
     planned: int
+    job: int
 
 
 LINES = tuple(
@@ -95,14 +133,15 @@ POSTS = tuple(line for line in LINES if line.method == "POST")
 
 
 def _fill(database: Database) -> World:
-    """Make one person of each role, a running study with a trial, and a planned one."""
+    """Make one person of each role, a running study with a trial and an upload, and a planned one."""
     place = a_study(database, responses=(MINUTES, WRONG_PICK))
     place.log({"walk": "return", "start": "back"}, {"minutes": "7.1"}, key=1)
     planned = another_study(database, place.keeper, place.series_id, title="Planned", started=False)
+    job = read_upload(database, place.keeper, place.study_id, name="tours.csv", content=FILE, now=NOW)
     somebody(database, ADDRESS_OF["stranger"])
     for role in ROLES:
         somebody_in(database, place.keeper, place.series_id, role=role, address=ADDRESS_OF[role])
-    return World(place.series_id, place.study_id, planned)
+    return World(place.series_id, place.study_id, planned, job)
 
 
 @pytest.fixture(scope="module")
@@ -136,7 +175,15 @@ def _ask(visitor: Visitor, line: Line, world: World) -> int:
     path = line.address.format(**asdict(world))
     if line.method == "GET":
         return visitor.get(path).status_code
-    return visitor.post(path, FORMS.get(line.endpoint, {})).status_code
+    return visitor.post(path, _form(line)).status_code
+
+
+def _form(line: Line) -> dict[str, object]:
+    """Give what a form sends; bytes are the content of a file."""
+    return {
+        name: (BytesIO(value), "tours.csv") if isinstance(value, bytes) else value
+        for name, value in FORMS.get(line.endpoint, {}).items()
+    }
 
 
 @pytest.mark.parametrize("who", VISITORS)
@@ -174,8 +221,8 @@ def test_a_form_without_the_mark_of_the_site_is_refused_everywhere(
     visitor = a_visitor(app, ADDRESS_OF["registry_keeper"])
     path = line.address.format(**asdict(filled[1]))
 
-    without = visitor.client.post(path, data=FORMS.get(line.endpoint, {}), buffered=True)
-    forged = visitor.client.post(path, data={**FORMS.get(line.endpoint, {}), "csrf_token": "forged"}, buffered=True)
+    without = visitor.client.post(path, data=_form(line), buffered=True)
+    forged = visitor.client.post(path, data={**_form(line), "csrf_token": "forged"}, buffered=True)
 
     assert (without.status_code, forged.status_code) == (400, 400)
 

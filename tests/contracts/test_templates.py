@@ -34,12 +34,16 @@ def pages_below(parent: type[Page] = Page) -> Iterator[type[Page]]:
             yield from pages_below(child)
 
 
-def macros_named(template: nodes.Template) -> Iterator[str]:
-    """Give the names under which a template imports macros; its blocks see them, though a static look does not."""
+def names_made(template: nodes.Template) -> Iterator[str]:
+    """Give the names a template makes itself; a static look takes those made in a branch for missing."""
     for whole in template.find_all(nodes.Import):
         yield whole.target
     for some in template.find_all(nodes.FromImport):
         yield from (name[1] if isinstance(name, tuple) else name for name in some.names)
+    for macro in template.find_all(nodes.Macro):
+        yield macro.name
+    for made in template.find_all(nodes.Assign):
+        yield from (name.name for name in made.find_all(nodes.Name) if name.ctx == "store")
 
 
 def names_used(environment: Environment, template: str) -> set[str]:
@@ -47,7 +51,7 @@ def names_used(environment: Environment, template: str) -> set[str]:
     assert environment.loader is not None
     source, _, _ = environment.loader.get_source(environment, template)
     parsed = environment.parse(source)
-    used = meta.find_undeclared_variables(parsed) - set(macros_named(parsed))
+    used = meta.find_undeclared_variables(parsed) - set(names_made(parsed))
     for other in meta.find_referenced_templates(parsed):
         assert other is not None, f"{template} names another template by a variable"
         if not other.startswith("macros/"):

@@ -47,7 +47,7 @@ class Visitor:
         """Ask for a page."""
         return self._noted(self.client.get(path, headers=_named(headers), buffered=True))
 
-    def post(self, path: str, fields: Mapping[str, str] | None = None, **headers: str) -> TestResponse:
+    def post(self, path: str, fields: Mapping[str, object] | None = None, **headers: str) -> TestResponse:
         """Send a form with the mark of the site in it."""
         if not self.token:
             self.get("/sign-in")

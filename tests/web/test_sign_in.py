@@ -29,10 +29,12 @@ def test_a_page_asked_for_without_a_sign_in_leads_to_the_form_and_back(app: Flas
 
 
 def test_a_form_sent_without_a_sign_in_is_refused_and_not_led_away(app: Flask) -> None:
-    response = a_visitor(app).post("/series/new", {"name": "Pick tours"})
+    response = a_visitor(app).post("/series/new", {"name": 'Pick "tours"'})
 
     assert response.status_code == 401
     assert "your sign-in has run out, and nothing was changed" in words_of(response)
+    assert '<form method="post" action="/series/new">' in response.text
+    assert '<input type="hidden" name="name" value="Pick &#34;tours&#34;" autocomplete="off">' in response.text
 
 
 def test_a_program_without_a_sign_in_gets_problem_details(app: Flask) -> None:
