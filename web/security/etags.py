@@ -6,7 +6,8 @@ import hashlib
 import json
 from collections.abc import Callable, Sequence
 
-from flask import Response, g, request, session
+from flask import g, request, session
+from werkzeug.wrappers import Response
 
 from web import shell
 
