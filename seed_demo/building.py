@@ -1,0 +1,206 @@
+"""Building the demo through the services, as people would: plan, start, log, set aside, close."""
+
+from __future__ import annotations
+
+import csv
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime, time, timedelta
+from io import StringIO
+from random import Random
+from uuid import UUID
+
+from registry.services.import_check import ColumnChoice
+from registry.services.opening import Database
+from registry.services.people import Person, add_person, grant
+from registry.services.series_pages import SeriesDraft, new_series
+from registry.services.settings import PasswordCost
+from registry.services.study_plan import PlanDraft, close_study, lock_plan, start_study
+from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft, new_study
+from registry.services.trial_edit import set_aside_trial
+from registry.services.trial_import import read_upload, run_import
+from registry.services.trial_log import MOST_AT_ONCE, TrialEntry, log_trials
+from seed_demo.scenario import MARGIN, SHIFT, STUDIES, PlannedStudy
+
+SEED = 20260112
+ZONE = "Europe/Copenhagen"
+TOURS_A_DAY = 8
+
+
+@dataclass(frozen=True)
+class DemoPeople:
+    """Who can sign in to the demo, and with what."""
+
+    keeper: Person
+    analyst: Person
+    logger: Person
+    password: str
+
+
+@dataclass(frozen=True)
+class _Tour:
+    """One simulated pick tour."""
+
+    levels: dict[str, str]
+    minutes: str
+    wrong_pick: str
+    happened_at: datetime
+
+
+def build_demo(
+    database: Database, *, now: datetime, password: str, hashing: PasswordCost, seed: int = SEED
+) -> DemoPeople:
+    """Fill an empty registry with the invented depot; the same seed gives the same trials."""
+    people = _add_people(database, now=now, password=password, hashing=hashing)
+    series_id = new_series(
+        database,
+        people.keeper,
+        SeriesDraft(
+            "Pick tours at Osierholm",
+            "How pickers walk their tours at the Osierholm Parts Depot, in both of its halls.",
+        ),
+        now=_morning(STUDIES[0], days=-10),
+    )
+    for person, role in ((people.analyst, "analyst"), (people.logger, "logger")):
+        grant(database, people.keeper, series_id, address=person.address, role=role, now=_morning(STUDIES[0], days=-10))
+    for place, planned in enumerate(STUDIES):
+        _build_study(database, people, series_id, planned, rng=Random(f"{seed}/{place}"), now=now)
+    return people
+
+
+def _add_people(database: Database, *, now: datetime, password: str, hashing: PasswordCost) -> DemoPeople:
+    start = min(now, _morning(STUDIES[0], days=-12))
+    add = [
+        add_person(
+            database,
+            name=name,
+            address=f"{part}@osierholm.example",
+            password=password,
+            keeper=part == "keeper",
+            now=start,
+            hashing=hashing,
+        )
+        for name, part in (("Runa Keel", "keeper"), ("Ane Tangen", "analyst"), ("Jo Birk", "logger"))
+    ]
+    return DemoPeople(*add, password)
+
+
+def _morning(planned: PlannedStudy, *, days: int = 0) -> datetime:
+    return datetime.combine(planned.starts, time(7, 0), UTC) + timedelta(days=days)
+
+
+def _build_study(
+    database: Database, people: DemoPeople, series_id: int, planned: PlannedStudy, *, rng: Random, now: datetime
+) -> None:
+    made_at = min(_morning(planned, days=-7), now)
+    study_id = new_study(database, people.analyst, series_id, _draft(planned), now=made_at)
+    if planned.status == "planned":
+        return
+    lock_plan(database, people.analyst, study_id, PlanDraft(str(planned.per_cell)), now=made_at)
+    start_study(database, people.analyst, study_id, now=_morning(planned))
+    tours = list(_tours(planned, rng))
+    if planned.imported:
+        _import(database, people, study_id, planned, tours)
+    else:
+        _log(database, people, study_id, planned, tours, rng)
+    last = tours[-1].happened_at
+    for number, reason in planned.set_aside.items():
+        set_aside_trial(database, people.analyst, study_id, number, reason=reason, now=last)
+    if planned.status == "closed":
+        if planned.close_reason == "size_reached" and planned.set_aside:
+            _make_up(database, people, study_id, planned, tours, rng)
+        close_study(
+            database,
+            people.analyst,
+            study_id,
+            reason=planned.close_reason,
+            note=planned.close_note,
+            now=last + timedelta(days=1),
+        )
+
+
+def _draft(planned: PlannedStudy) -> StudyDraft:
+    factors = [FactorDraft(name, "treatment", levels) for name, levels in planned.factors.items()]
+    if planned.block:
+        factors.append(FactorDraft("shift", "block", SHIFT))
+    factors += [FactorDraft(name, "held", (level,)) for name, level in planned.held.items()]
+    responses = [
+        ResponseDraft("minutes", "minutes per tour, from the first scan to the drop", "min", "0.1", MARGIN, "lower",
+                      "measured", "primary")
+    ]  # fmt: skip
+    if planned.guard:
+        responses.append(
+            ResponseDraft(
+                "wrong pick", "whether the tour had a wrong pick", "count", "1", "", "lower", "yes_no", "guard"
+            )
+        )
+    return StudyDraft(planned.title, planned.question, planned.site, ZONE, tuple(factors), tuple(responses))
+
+
+def _tours(planned: PlannedStudy, rng: Random) -> Iterator[_Tour]:
+    """Run the tours of a study in random order, a set of all combinations after another."""
+    order: list[dict[str, str]] = []
+    for _ in range(planned.per_cell):
+        complete = [dict(cell) for cell in planned.cells if not _skipped(planned, cell)]
+        rng.shuffle(complete)
+        order += complete
+    for place, levels in enumerate(order[: round(len(order) * planned.share)]):
+        yield _tour(planned, levels, place, rng)
+
+
+def _skipped(planned: PlannedStudy, cell: dict[str, str]) -> bool:
+    return any(all(cell[name] == level for name, level in skipped.items()) for skipped in planned.skipped)
+
+
+def _tour(planned: PlannedStudy, levels: dict[str, str], place: int, rng: Random) -> _Tour:
+    minutes = max(1.0, planned.true_mean(levels) + rng.gauss(0.0, planned.truth.sd))
+    day, turn = divmod(place, TOURS_A_DAY)
+    happened = _morning(planned, days=day) + timedelta(minutes=30 + 55 * turn + rng.randrange(20))
+    wrong = "yes" if rng.random() < planned.truth.wrong_pick else "no"
+    return _Tour(levels, f"{minutes:.1f}", wrong, happened)
+
+
+def _log(
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour], rng: Random
+) -> None:
+    """Log tours in the order they happened, a list at a time, as a phone sends them."""
+    entries = [
+        TrialEntry(
+            key=str(UUID(int=rng.getrandbits(128), version=4)),
+            levels=tour.levels,
+            readings={"minutes": tour.minutes} | ({"wrong pick": tour.wrong_pick} if planned.guard else {}),
+            happened_at=tour.happened_at,
+        )
+        for tour in tours
+    ]
+    for start in range(0, len(entries), MOST_AT_ONCE):
+        some = entries[start : start + MOST_AT_ONCE]
+        log_trials(database, people.logger, study_id, some, now=some[-1].happened_at or _morning(planned))
+
+
+def _make_up(
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour], rng: Random
+) -> None:
+    """Run again what was set aside, so that the planned size is reached."""
+    again = [tours[number - 1].levels for number in planned.set_aside]
+    made_up = [_tour(planned, levels, len(tours) + place, rng) for place, levels in enumerate(again)]
+    _log(database, people, study_id, planned, made_up, rng)
+
+
+def _import(
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour]
+) -> None:
+    """Take a study in from the file that the shift leads kept."""
+    names = list(tours[0].levels)
+    text = StringIO()
+    writer = csv.writer(text)
+    writer.writerow([*names, "minutes", "when"])
+    for tour in tours:
+        writer.writerow([*tour.levels.values(), tour.minutes, tour.happened_at.isoformat()])
+    last = tours[-1].happened_at
+    job = read_upload(
+        database, people.analyst, study_id, name="spring tours.csv", content=text.getvalue().encode(), now=last
+    )
+    choices = [*(ColumnChoice("factor", name) for name in names), ColumnChoice("response", "minutes"),
+               ColumnChoice("happened_at")]  # fmt: skip
+    run_import(database, people.analyst, study_id, job, choices=choices, round_offered=False, now=last)
