@@ -91,9 +91,16 @@ def _add_demo(commands: Commands) -> None:
 
 def _demo(wish: argparse.Namespace) -> int:
     from seed_demo.running import run_demo
+    from web.serving import serve
 
     return run_demo(
-        host=wish.host, port=wish.port, browser=not wish.no_browser, folder=wish.at, now=datetime.now(UTC), say=print
+        serve,
+        host=wish.host,
+        port=wish.port,
+        browser=not wish.no_browser,
+        folder=wish.at,
+        now=datetime.now(UTC),
+        say=print,
     )
 
 

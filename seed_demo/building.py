@@ -10,6 +10,7 @@ from io import StringIO
 from random import Random
 from uuid import UUID
 
+from registry.services.access import Role
 from registry.services.import_check import ColumnChoice
 from registry.services.opening import Database
 from registry.services.people import Person, add_person, grant
@@ -61,7 +62,8 @@ def build_demo(
         ),
         now=_morning(STUDIES[0], days=-10),
     )
-    for person, role in ((people.analyst, "analyst"), (people.logger, "logger")):
+    roles: tuple[tuple[Person, Role], ...] = ((people.analyst, "analyst"), (people.logger, "logger"))
+    for person, role in roles:
         grant(database, people.keeper, series_id, address=person.address, role=role, now=_morning(STUDIES[0], days=-10))
     for place, planned in enumerate(STUDIES):
         _build_study(database, people, series_id, planned, rng=Random(f"{seed}/{place}"), now=now)
@@ -70,7 +72,7 @@ def build_demo(
 
 def _add_people(database: Database, *, now: datetime, password: str, hashing: PasswordCost) -> DemoPeople:
     start = min(now, _morning(STUDIES[0], days=-12))
-    add = [
+    keeper, analyst, logger = (
         add_person(
             database,
             name=name,
@@ -81,8 +83,8 @@ def _add_people(database: Database, *, now: datetime, password: str, hashing: Pa
             hashing=hashing,
         )
         for name, part in (("Runa Keel", "keeper"), ("Ane Tangen", "analyst"), ("Jo Birk", "logger"))
-    ]
-    return DemoPeople(*add, password)
+    )
+    return DemoPeople(keeper, analyst, logger, password)
 
 
 def _morning(planned: PlannedStudy, *, days: int = 0) -> datetime:

@@ -11,17 +11,31 @@ from contextlib import ExitStack
 from datetime import datetime
 from importlib.metadata import version
 from pathlib import Path
+from typing import Protocol
 
 from registry.errors import AlreadyThere, Fault
-from registry.services.opening import open_registry
+from registry.services.opening import Database, open_registry
 from registry.services.settings import PasswordCost, Settings
 from registry.services.upkeep import upgrade
 from seed_demo.building import build_demo
-from web.serving import serve
+
+
+class Serve(Protocol):
+    """What serves a registry; the command hands it over, so that the demo itself asks services only."""
+
+    def __call__(self, database: Database, settings: Settings, *, ready: Callable[[str], None]) -> None:
+        """Serve until stopped; call ``ready`` with the address."""
 
 
 def run_demo(
-    *, host: str, port: int, browser: bool, folder: Path | None, now: datetime, say: Callable[[str], None]
+    serve: Serve,
+    *,
+    host: str,
+    port: int,
+    browser: bool,
+    folder: Path | None,
+    now: datetime,
+    say: Callable[[str], None],
 ) -> int:
     """Make a fresh registry, load the demo, tell where it is and how to sign in, serve until stopped."""
     with ExitStack() as stack:

@@ -13,7 +13,7 @@ from sqlalchemy import create_engine, text
 
 from registry.storage.engine import Database, open_database
 from registry.storage.upgrade import upgrade
-from tests.support.postgres import NoServer, Server, running_server
+from tests.support.postgres import NoServerError, Server, running_server
 
 DIALECTS = ("sqlite", "postgresql")
 
@@ -29,7 +29,7 @@ def postgres() -> Iterator[Server]:
     try:
         with running_server() as server:
             yield server
-    except NoServer as absence:
+    except NoServerError as absence:
         if in_ci():
             raise
         pytest.skip(str(absence))

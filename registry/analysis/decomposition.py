@@ -58,7 +58,7 @@ MOST_FACTORS = 6
 
 
 def decompose(study: TalliedStudy, *, error: ErrorPolicy = "pooled", confidence: float = 0.95) -> Decomposition:
-    """Take a study apart: what is each cell mean built of, and how sure is that?
+    """Say what each cell mean of a study is built of, and how sure that is.
 
     ``error`` picks the standard error of every mean, offset and comparison: "pooled" by
     the residual mean square, "per-cell" by Satterthwaite from each cell's own variance.
@@ -140,7 +140,7 @@ class _Work:
         return [self._estimate(value, *error) for value, error in zip(values, errors, strict=True)]
 
     def _errors(self, rows: npt.NDArray[np.float64], values: list[Number]) -> list[tuple[Number, Number]]:
-        """Standard error and df of each row, by the policy; undefined wherever the value is."""
+        """Give standard error and df of each row, by the policy; undefined wherever the value is."""
         if self.error == "per-cell":
             own = self.division.fit.own_variance(rows)
             return [
@@ -164,7 +164,7 @@ class _Work:
         return Estimate(value, se, df, value - reach, value + reach)
 
     def _as_logged(self, cells: list[int]) -> Estimate:
-        """The plain mean of all readings in some cells."""
+        """Give the plain mean of all readings in some cells."""
         filled = [at for at in cells if self.exact.cells[at].n]
         if not filled:
             nothing = Undefined("no trials here")

@@ -83,4 +83,5 @@ def _range_below(widths: Floats, means: int) -> Floats:
     largest = places * _REACH
     density = np.exp(-(largest**2) / 2) / np.sqrt(2 * np.pi) * weights * _REACH
     between = special.ndtr(largest)[None, :] - special.ndtr(largest[None, :] - widths[:, None])
-    return means * (between ** (means - 1)) @ density
+    below: Floats = means * (between ** (means - 1)) @ density
+    return below

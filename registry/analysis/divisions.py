@@ -186,7 +186,7 @@ def _divide_blocked(study: ExactStudy) -> Division:
 
 
 def _aliased(ground: WeightedCells, with_blocks: Floats, columns: Floats) -> bool:
-    """A term is aliased with blocks when it adds something to the mean alone and nothing once blocks are fitted."""
+    """Whether a term adds something to the mean alone, and nothing once blocks are fitted."""
     alone = ground.grow(ground.start(), columns).df
     return alone > 0 and ground.grow(with_blocks, columns).df == 0
 

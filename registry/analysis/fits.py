@@ -66,8 +66,9 @@ class CellFit:
     study: ExactStudy
 
     def estimable(self, rows: Floats) -> npt.NDArray[np.bool_]:
-        """A row can be said when it touches no empty cell."""
-        return ~np.any((rows != 0) & ~self.study.filled, axis=1)
+        """Say which rows touch no empty cell."""
+        touches: npt.NDArray[np.bool_] = np.any((rows != 0) & ~self.study.filled, axis=1)
+        return ~touches
 
     def values(self, rows: Whole, denominator: int, *, of_mean: bool) -> list[Number]:
         """Combine exact cell means; a row that touches an empty cell is undefined."""
@@ -78,11 +79,13 @@ class CellFit:
     @cached_property
     def _one_over_n(self) -> Floats:
         n = self.study.n.astype(float)
-        return np.divide(1.0, n, out=np.full_like(n, np.nan), where=n > 0)
+        inverse: Floats = np.divide(1.0, n, out=np.full_like(n, np.nan), where=n > 0)
+        return inverse
 
     def pooled_variance(self, rows: Floats) -> Floats:
         """Sum of squared coefficients over n."""
-        return np.where(rows != 0, rows**2 * self._one_over_n, 0.0).sum(axis=1)
+        variance: Floats = np.where(rows != 0, rows**2 * self._one_over_n, 0.0).sum(axis=1)
+        return variance
 
     def own_variance(self, rows: Floats) -> list[tuple[Number, Number]]:
         """Sum of k² v / n with Satterthwaite's degrees of freedom (Satterthwaite 1946; Welch 1947)."""
@@ -136,11 +139,12 @@ class BlockFit:
     unseen: Floats
 
     def estimable(self, rows: Floats) -> npt.NDArray[np.bool_]:
-        """A row can be said when it has no part in what the trials say nothing about."""
+        """Say which rows have no part in what the trials say nothing about."""
         if not self.unseen.size:
             return np.ones(len(rows), dtype=bool)
         scale = np.abs(rows).sum(axis=1).clip(min=1e-300)
-        return (np.abs(rows @ self.cell_model @ self.unseen).max(axis=1) / scale) < _NEARLY_ZERO
+        share: Floats = np.abs(rows @ self.cell_model @ self.unseen).max(axis=1) / scale
+        return share < _NEARLY_ZERO
 
     def values(self, rows: Whole, denominator: int, *, of_mean: bool) -> list[Number]:
         """Combine expected cell means, in floats; the centre is put back under a mean."""
@@ -153,7 +157,8 @@ class BlockFit:
     def pooled_variance(self, rows: Floats) -> Floats:
         """Quadratic forms in the covariance of the coefficients."""
         parts = rows @ self.cell_model
-        return np.einsum("ij,jk,ik->i", parts, self.inverse, parts)
+        variance: Floats = np.einsum("ij,jk,ik->i", parts, self.inverse, parts)
+        return variance
 
     def own_variance(self, rows: Floats) -> list[tuple[Number, Number]]:
         """Nothing: with blocks the error is the residual of the block model."""

@@ -35,7 +35,8 @@ class WeightedCells:
     def start(self) -> Floats:
         """Give the model of one common mean, as an orthonormal column."""
         root = np.sqrt(self.weights)
-        return (root / np.linalg.norm(root))[:, None]
+        column: Floats = (root / np.linalg.norm(root))[:, None]
+        return column
 
     def grow(self, model: Floats, columns: Floats) -> Gain:
         """Add columns to an orthonormal model.

@@ -58,6 +58,6 @@ def decompose_file(wish: FileWish) -> FileAnswer:
             )
         )
     result = decompose(table.study, error=wish.error, confidence=wish.confidence)
-    rows = "row has" if table.left_out == 1 else "rows have"
-    notes = (f"{table.left_out} {rows} no reading and are left out",) if table.left_out else ()
+    rows = "row has no reading and is" if table.left_out == 1 else "rows have no reading and are"
+    notes = (f"{table.left_out} {rows} left out",) if table.left_out else ()
     return FileAnswer(wish, str(table.step), result, notes)

@@ -44,7 +44,8 @@ def sentences_of(card: StudyCard, response: ResponseLine, result: Decomposition)
     yield _size(card, response, result)
     mean = result.equal_weight
     if not isinstance(mean.estimate, Undefined):
-        yield f"The grand mean is {_amount(mean.estimate, response)} {_unit(response)}{_range(mean.lower, mean.upper, response)}."
+        spoken = f"{_amount(mean.estimate, response)} {_unit(response)}"
+        yield f"The grand mean is {spoken}{_range(mean.lower, mean.upper, response)}."
     if not may_judge(card):
         reason = why_not_judged(card)
         if reason:

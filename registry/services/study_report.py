@@ -152,7 +152,7 @@ def _chosen(frame: StudyFrame, name: str | None) -> FrameResponse:
 
 
 def error_policy(card: StudyCard) -> ErrorPolicy:
-    """The study's one spread policy, as the analysis calls it; shared until a plan says otherwise."""
+    """Give the study's one spread policy as the analysis calls it; shared until a plan says otherwise."""
     return "per-cell" if card.spread == "own" and card.block is None else "pooled"
 
 

@@ -111,7 +111,7 @@ def far_reading(response: FrameResponse, steps: int, *, anchor: int, place: str,
     return ReadingRefused(
         Fault(
             place,
-            f"{given} is more than {MAX_DISTANCE} steps of {write_steps(1, response.step)} from the first reading, {first}",
+            f"{given} is more than {MAX_DISTANCE} steps of {response.step} from the first reading, {first}",
             "check the unit",
             field,
         )

@@ -127,8 +127,8 @@ def _waiting(kept: ImportJob | None, job: int) -> ImportJob:
 def _revived(remembered: list[list[str]] | None, frame: StudyFrame, columns: Sequence[str]) -> tuple[ColumnChoice, ...]:
     """Use what these heads meant last time, if it still fits this study; else guess."""
     if remembered is not None:
-        kinds = {kind: kind for kind in COLUMN_KINDS}
-        choices = tuple(ColumnChoice(kinds[kind], target) for kind, target in remembered)
+        kinds: dict[str, ColumnKind] = {kind: kind for kind in COLUMN_KINDS}
+        choices = tuple(ColumnChoice(kinds[kind], target) for kind, target in remembered if kind in kinds)
         if not choice_faults(frame, columns, choices):
             return choices
     return guessed_choices(frame, columns)

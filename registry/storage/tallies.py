@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from sqlalchemy import BigInteger, and_, bindparam, func, literal_column, select, update
+from sqlalchemy import BigInteger, ColumnClause, Table, and_, bindparam, func, literal_column, select, update
 from sqlalchemy.dialects import postgresql, sqlite
 from sqlalchemy.orm import Session
 
@@ -16,8 +16,8 @@ from registry.trials.tallies import EMPTY, LIMB, LIMB_BITS, MAX_CELL_TRIALS, Tal
 
 # The shift is written as a literal: as a bound parameter PostgreSQL would take it for a
 # bigint, and it has no bigint >> bigint.
-_SHIFT = literal_column(str(LIMB_BITS))
-_MASK = literal_column(str(LIMB - 1))
+_SHIFT: ColumnClause[int] = literal_column(str(LIMB_BITS))
+_MASK: ColumnClause[int] = literal_column(str(LIMB - 1))
 
 
 @dataclass(frozen=True, order=True)
@@ -50,7 +50,7 @@ def change_tallies(session: Session, study_id: int, changes: Mapping[TallyKey, T
         return
     _make_rows(session, study_id, changes)
     _refuse_full_cells(session, study_id, changes)
-    table = TallyRow.__table__
+    table = _table()
     low = bindparam("low", type_=BigInteger)
     statement = (
         update(table)
@@ -78,10 +78,17 @@ def change_tallies(session: Session, study_id: int, changes: Mapping[TallyKey, T
     session.connection().execute(statement, parameters)
 
 
+def _table() -> Table:
+    table = TallyRow.__table__
+    if not isinstance(table, Table):
+        raise TypeError("the tally's model stands on one table")
+    return table
+
+
 def _make_rows(session: Session, study_id: int, changes: Mapping[TallyKey, Tally]) -> None:
     """See that a row stands for every tally that will change, so that the change is an UPDATE on both databases."""
     insert = postgresql.insert if session.get_bind().dialect.name == "postgresql" else sqlite.insert
-    statement = insert(TallyRow.__table__).on_conflict_do_nothing()
+    statement = insert(_table()).on_conflict_do_nothing()
     session.connection().execute(
         statement,
         [

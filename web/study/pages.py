@@ -17,7 +17,7 @@ from web.study.forms import EndForm, PlanForm, StepForm
 
 @dataclass(frozen=True)
 class ReportPage(Page):
-    """What did this study find?"""
+    """Say what a study found."""
 
     template: ClassVar[str] = "study/report.html"
 
@@ -33,7 +33,7 @@ class ReportPage(Page):
 
 @dataclass(frozen=True)
 class PlanPage(Page):
-    """What is promised before the first trial?"""
+    """Say what is promised before the first trial."""
 
     template: ClassVar[str] = "study/plan.html"
 
@@ -70,7 +70,7 @@ class StepPage(Page):
 
 @dataclass(frozen=True)
 class EventsPage(Page):
-    """Who changed what, and when?"""
+    """Say who changed what, and when."""
 
     template: ClassVar[str] = "study/history.html"
 

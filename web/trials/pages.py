@@ -14,7 +14,7 @@ from web.trials.forms import CorrectForm, KeepForm
 
 @dataclass(frozen=True)
 class TrialsPage(Page):
-    """What was logged?"""
+    """Say what was logged."""
 
     template: ClassVar[str] = "trials/every.html"
 

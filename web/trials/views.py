@@ -40,7 +40,7 @@ def blueprint() -> Blueprint:
 
 def every(study_id: int) -> Response:
     """List the trials of a study."""
-    which = next((known for known in WHICH if known == request.args.get("which")), "all")
+    which = next((known for known in WHICH if known == request.args.get("which")), WHICH[0])
     listed = trial_list(shell.database(), shell.person(), study_id, page=request.args.get("page", 1, int), which=which)
     return render_page(TrialsPage(listed.card, listed))
 

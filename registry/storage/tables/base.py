@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, datetime
-from typing import Annotated, Any
+from typing import Annotated, Any, ClassVar
 
 from sqlalchemy import JSON, BigInteger, DateTime, Dialect, Integer, MetaData, String, Text
 from sqlalchemy.orm import DeclarativeBase, mapped_column
@@ -58,9 +58,14 @@ class Base(DeclarativeBase):
     """Every table of the registry."""
 
     metadata = MetaData(naming_convention=NAMES)
-    type_annotation_map = {int: BigKey, datetime: Moment, dict[str, Any]: JSON, list[Any]: JSON}
+    type_annotation_map: ClassVar[dict[Any, Any]] = {
+        int: BigKey,
+        datetime: Moment,
+        dict[str, Any]: JSON,
+        list[Any]: JSON,
+    }
 
 
 def one_of(column: str, *codes: str) -> str:
-    """SQL that holds a column to its codes (our own constants, never user text)."""
+    """Write SQL that holds a column to its codes (our own constants, never user text)."""
     return f"{column} IN ({', '.join(repr(code) for code in codes)})"
