@@ -1,0 +1,1 @@
+"""Journeys through the pages in a real browser."""
