@@ -1,0 +1,1 @@
+"""Benches: ratios of one run, printed, never timed tests."""
