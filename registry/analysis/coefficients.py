@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from functools import reduce
+from collections.abc import Callable, Mapping, Sequence
+from functools import lru_cache, reduce, wraps
 from itertools import combinations, product
 from math import prod
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy as np
 import numpy.typing as npt
@@ -18,6 +18,23 @@ Whole = npt.NDArray[Any]
 Floats = npt.NDArray[np.float64]
 
 
+Answer = TypeVar("Answer")
+# Coefficients of larger layouts take more room than the time they save.
+MOST_REMEMBERED = 256
+
+
+def remembered(make: Callable[[Layout, Term], Answer]) -> Callable[[Layout, Term], Answer]:
+    """Remember what was made for small layouts: it depends on the layout alone, and nobody may change it."""
+    keep = lru_cache(maxsize=1024)(make)
+
+    @wraps(make)
+    def given(layout: Layout, term: Term) -> Answer:
+        return keep(layout, term) if prod(layout.shape) <= MOST_REMEMBERED else make(layout, term)
+
+    return given
+
+
+@remembered
 def offset_rows(layout: Layout, term: Term) -> tuple[Whole, int]:
     """Coefficients of a term's offsets under sum-to-zero, equal weights.
 
@@ -33,6 +50,7 @@ def offset_rows(layout: Layout, term: Term) -> tuple[Whole, int]:
     return reduce(np.kron, parts), prod(layout.shape)
 
 
+@remembered
 def mean_rows(layout: Layout, term: Term) -> tuple[Whole, int]:
     """Coefficients of the equal-weight means at each combination of the term's levels, with their denominator."""
     parts = [
@@ -42,6 +60,7 @@ def mean_rows(layout: Layout, term: Term) -> tuple[Whole, int]:
     return reduce(np.kron, parts), prod(size for at, size in enumerate(layout.shape) if at not in term)
 
 
+@remembered
 def contrast_rows(layout: Layout, term: Term) -> Floats:
     """Orthonormal contrasts of a term over cells, one row a degree of freedom: equal-weight averages of the rest."""
     parts = [
@@ -60,6 +79,7 @@ def orthonormal(size: int) -> Floats:
     return columns
 
 
+@remembered
 def term_columns(layout: Layout, term: Term) -> Floats:
     """Model columns of a term over cells, effect-coded and orthonormal where every cell is filled."""
     parts = [

@@ -38,6 +38,9 @@ def studentized_range_upper(statistic: float, means: int, df: float) -> float:
     (Tukey 1953; Hayter 1984). Gauss-Legendre over the spread, and within it over the
     largest normal; about 1e-12 off where p is above 1e-6.
     """
+    if means == 2:
+        # The range of two is √2 |t|, so Student's distribution says it directly.
+        return t_two_sided(statistic / np.sqrt(2.0), df)
     spread, weights = _spread_nodes(df)
     return float(np.clip(weights @ (1.0 - _range_below(statistic * spread, means)), 0.0, 1.0))
 
