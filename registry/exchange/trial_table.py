@@ -15,7 +15,7 @@ from registry.errors import Fault, InputRefused, ReadingRefused
 from registry.exchange.workbooks import first_sheet
 from registry.trials.factors import Factor
 from registry.trials.layouts import Layout
-from registry.trials.readings import Step, read_steps, steps_reader
+from registry.trials.readings import Step, read_decimal, read_steps, steps_reader
 from registry.trials.tallies import EMPTY, TalliedStudy, Tally
 
 _CHUNK = 20_000
@@ -193,8 +193,6 @@ def _step_of(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]]) ->
 
 
 def _places_of_exponent(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]], text: str) -> int:
-    from registry.trials.readings import read_decimal
-
     try:
         exponent = read_decimal(text).as_tuple().exponent
     except ReadingRefused as error:

@@ -7,10 +7,8 @@ from dataclasses import dataclass
 
 from registry.analysis.results import Decomposition, MarginalMean, TermResult
 from registry.analysis.undefined import Undefined
-from registry.services.figures import Figure, Interval, figure, interval
+from registry.services.figures import Interval, figure, interval
 from registry.trials.terms import term_name
-
-NOTHING = Interval(*(Figure(None, "no trials here"),) * 4)
 
 
 @dataclass(frozen=True)

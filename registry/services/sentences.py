@@ -10,6 +10,8 @@ from registry.analysis.undefined import Number, Undefined
 from registry.services.study_card import ResponseLine, StudyCard
 
 MOST_SAID = 3
+# What takes time is said to take it; anything else is said to read.
+TIMES = frozenset({"s", "ms", "min", "h", "d", "min_per", "s_per"})
 
 
 def may_judge(card: StudyCard) -> bool:
@@ -88,12 +90,10 @@ def _count(number: int) -> str:
 
 def _difference(finding: Finding, pair: Comparison, response: ResponseLine) -> str:
     value = _value(finding.estimate)
+    verb = "takes" if response.unit in TIMES else "reads"
     more = "more" if value > 0 else "less"
     return (
-        f"{pair.factor} {pair.to_level} takes {_amount(abs(value), response)} {_unit(response)} {more} than"
-        f" {pair.from_level}{_range(finding.lower, finding.upper, response, turned=value < 0)}"
-        if response.unit in ("s", "ms", "min", "h", "d", "min_per", "s_per")
-        else f"{pair.factor} {pair.to_level} reads {_amount(abs(value), response)} {_unit(response)} {more} than"
+        f"{pair.factor} {pair.to_level} {verb} {_amount(abs(value), response)} {_unit(response)} {more} than"
         f" {pair.from_level}{_range(finding.lower, finding.upper, response, turned=value < 0)}"
     )
 
