@@ -142,6 +142,24 @@ def test_a_column_may_have_any_name(name: str, tmp_path: Path, capsys: pytest.Ca
     assert any(note.startswith("1 row has no reading") for note in record["notes"])
 
 
+def test_a_file_that_is_not_utf_8_is_refused_with_its_line(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    path = tmp_path / "tours.csv"
+    path.write_bytes(b"walk,minutes\n" + b"return,7.1\n" * 20_000 + b"r\xe9turn,7.1\n")
+
+    assert main(["decompose", str(path), "--response", "minutes", "--factor", "walk"]) == 1
+    assert "tours.csv, line 20002: it is not text in UTF-8" in capsys.readouterr().err
+
+
+@pytest.mark.parametrize("text", [".25", "-0.25", "\N{MINUS SIGN}0.25", "25e-2", "+0.25"])
+def test_the_step_is_read_off_however_a_number_is_written(
+    text: str, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    path = tmp_path / "tours.csv"
+    path.write_text(f"walk,minutes\na,1\nb,{text}\na,2\nb,3\n", encoding="utf-8")
+
+    assert decomposed(capsys, path, "--response", "minutes", "--factor", "walk")["step"] == "0.01"
+
+
 def test_recount_names_what_is_wrong_and_exits_with_one(
     sqlite: Database, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> None:

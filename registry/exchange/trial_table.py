@@ -101,16 +101,25 @@ def _count_rows(path: Path, columns: Columns) -> Counter[tuple[str, ...]]:
         ) from None
     except (IsADirectoryError, PermissionError) as error:
         raise InputRefused(Fault(str(path), str(error.strerror), "give a file that can be read")) from None
-    except UnicodeDecodeError as error:
-        line = path.read_bytes().count(b"\n", 0, error.start) + 1 if error.start else 1
+    except UnicodeDecodeError:
         raise InputRefused(
-            Fault(f"{path.name}, near line {line}", "it is not text in UTF-8", "save it as CSV in UTF-8")
+            Fault(f"{path.name}, line {_undecodable_line(path)}", "it is not text in UTF-8", "save it as CSV in UTF-8")
         ) from None
     except csv.Error as error:
         raise InputRefused(Fault(f"{path.name}, {_bad_line(path)}", str(error), "check the quotes")) from None
     if not counts:
         raise InputRefused(Fault(path.name, "it has heads and no rows", "give one trial a row below the heads"))
     return counts
+
+
+def _undecodable_line(path: Path) -> int:
+    """Find the line that is not UTF-8: the reader's own error counts from the start of some chunk."""
+    content = path.read_bytes()
+    try:
+        content.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        return content.count(b"\n", 0, error.start) + 1
+    return 1
 
 
 def _bad_line(path: Path) -> str:
@@ -185,9 +194,9 @@ def _step_of(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]]) ->
     places = 0
     for text in {key[-1] for key in counts}:
         whole, point, digits = text.strip().partition(".")
-        if point and digits.isdigit() and whole.lstrip("+-").isdigit():
+        if whole.isdigit() and (digits.isdigit() or not point):
             places = max(places, len(digits))
-        elif "e" in text or "E" in text:
+        elif text.strip():
             places = max(places, _places_of_exponent(path, columns, counts, text))
     return Step.parse(f"1e-{places}")
 
