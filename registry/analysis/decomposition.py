@@ -16,7 +16,6 @@ from registry.analysis.coefficients import (
     interaction_rows,
     mean_rows,
     offset_rows,
-    orthonormal,
     pair_rows,
     slice_cells,
     term_levels,
@@ -310,19 +309,11 @@ class _Work:
         filled = [at for at in cells if self.exact.cells[at].n]
         if len(filled) < 2:
             return 0, EMPTY_CELL
-        contrasts = np.zeros((len(filled) - 1, len(self.exact.cells)))
-        contrasts[:, filled] = orthonormal(len(filled)).T
-        fit = self.division.fit
-        contrasts = contrasts[fit.estimable(contrasts)]
-        if not len(contrasts):
+        df, ss = self.division.fit.among(filled)
+        if df == 0:
             return 0, EMPTY_CELL
         scale = self.spread.scale()
-        if isinstance(scale, Undefined):
-            return len(contrasts), scale
-        values = fit.centred(contrasts)
-        return len(contrasts), float(
-            values @ np.linalg.solve(fit.covariance(contrasts), values) / len(contrasts) / scale
-        )
+        return df, scale if isinstance(scale, Undefined) else ss / df / scale
 
 
 def _root(variance: Number) -> Number:

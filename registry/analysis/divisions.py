@@ -98,7 +98,7 @@ def _one_way(study: ExactStudy) -> TermShares:
 
 def _unbalanced(study: ExactStudy, terms: Sequence[Term]) -> list[TermShares]:
     cells = np.flatnonzero(study.filled)
-    ground = WeightedCells(study.n[cells].astype(float), study.group_means())
+    ground = WeightedCells(study.n[cells].astype(float), study.group_means)
     columns = {term: term_columns(study.layout, term)[cells] for term in terms}
     fit = CellFit(study)
     sequential = _in_order(ground, ground.start(), terms, columns)
@@ -149,7 +149,7 @@ def _divide_blocked(study: ExactStudy) -> Division:
     blocks = np.array([group[0] for group in study.groups])
     cells = np.array([group[1] for group in study.groups])
     weights = np.array([float(tally.n) for _, _, tally in study.groups])
-    ground = WeightedCells(weights, study.group_means())
+    ground = WeightedCells(weights, study.group_means)
     in_block = orthonormal(len(block.levels) if block else 1)[blocks]
     terms = all_terms(len(study.layout.factors))
     over_cells = {term: term_columns(study.layout, term) for term in terms}

@@ -147,6 +147,7 @@ class ExactStudy:
             whole = whole.merge(self.cells[at])
         return whole.n, self.value(whole.total, whole.n, of_mean=True)
 
+    @cached_property
     def group_means(self) -> Floats:
         """Means of the groups about the centre, in response units."""
         return np.array(

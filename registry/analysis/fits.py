@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any, Protocol
@@ -9,6 +10,7 @@ from typing import Any, Protocol
 import numpy as np
 import numpy.typing as npt
 
+from registry.analysis.coefficients import orthonormal
 from registry.analysis.exact import ExactStudy
 from registry.analysis.undefined import (
     BLOCKS_SHARE,
@@ -57,6 +59,9 @@ class Fit(Protocol):
 
     def estimable(self, rows: Floats) -> npt.NDArray[np.bool_]:
         """Whether the trials there are can say each row."""
+
+    def among(self, cells: Sequence[int]) -> tuple[int, float]:
+        """Degrees of freedom and sum of squares of the differences among filled cells, those that can be estimated."""
 
 
 @dataclass(frozen=True)
@@ -109,13 +114,18 @@ class CellFit:
 
     def covariance(self, rows: Floats) -> Floats:
         """Weighted cross products of the coefficients."""
-        weights = np.where(self.study.filled, np.nan_to_num(self._one_over_n), 0.0)
-        return (rows * weights) @ rows.T
+        return (rows * np.where(self.study.filled, self._one_over_n, 0.0)) @ rows.T
+
+    def among(self, cells: Sequence[int]) -> tuple[int, float]:
+        """Sum of n (mean - weighted mean)²: independent means need no more."""
+        at = list(cells)
+        n, means = self.study.n[at], self._about_centre[at]
+        return len(at) - 1, float(n @ (means - n @ means / n.sum()) ** 2)
 
     @cached_property
     def _about_centre(self) -> Floats:
         means = np.zeros(len(self.study.cells))
-        means[self.study.filled] = self.study.group_means()
+        means[self.study.filled] = self.study.group_means
         return means
 
     def centred(self, rows: Floats) -> Floats:
@@ -172,3 +182,11 @@ class BlockFit:
     def centred(self, rows: Floats) -> Floats:
         """Combine expected cell means about the centre."""
         return rows @ (self.cell_model @ self.beta)
+
+    def among(self, cells: Sequence[int]) -> tuple[int, float]:
+        """Give the quadratic form of orthonormal differences among the cells."""
+        differences = np.zeros((len(cells) - 1, len(self.study.cells)))
+        differences[:, list(cells)] = orthonormal(len(cells)).T
+        differences = differences[self.estimable(differences)]
+        values = self.centred(differences)
+        return len(values), float(values @ np.linalg.solve(self.covariance(differences), values))
