@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from functools import cached_property
 from itertools import combinations
 from math import prod, sqrt
 from typing import Any
@@ -24,12 +23,11 @@ from registry.analysis.distributions import (
     f_upper,
     studentized_range_quantile,
     studentized_range_upper,
-    t_quantile,
     t_two_sided,
 )
-from registry.analysis.divisions import SS, Division, Share, TermShares, divide
+from registry.analysis.divisions import SS, Division, Share, TermShares
+from registry.analysis.estimation import Estimator, root
 from registry.analysis.exact import ExactStudy
-from registry.analysis.fits import Spread
 from registry.analysis.notes import notes_of
 from registry.analysis.results import (
     CellSummary,
@@ -47,7 +45,7 @@ from registry.analysis.results import (
     TermResult,
     Total,
 )
-from registry.analysis.undefined import EMPTY_CELL, NO_FREEDOM, NO_SPREAD, Number, Undefined
+from registry.analysis.undefined import EMPTY_CELL, NO_SPREAD, Number, Undefined
 from registry.errors import Fault, InputRefused
 from registry.trials.tallies import TalliedStudy
 from registry.trials.terms import Term, all_terms
@@ -71,28 +69,28 @@ def decompose(study: TalliedStudy, *, error: ErrorPolicy = "pooled", confidence:
         raise InputRefused(Fault("factors", f"{len(study.layout.factors)} given", f"give 1 to {MOST_FACTORS}"))
     if not 0 < confidence < 1:
         raise InputRefused(Fault("confidence", f"{confidence} given", "give a number between 0 and 1, as 0.95"))
-    exact = ExactStudy.of(study)
-    return _Work(exact, divide(exact), error, confidence).result()
+    return _Work(Estimator.of(study, error=error, confidence=confidence)).result()
 
 
 @dataclass(frozen=True)
 class _Work:
-    """One decomposition under way: the exact study, its division, and the wishes."""
+    """One decomposition under way: what estimates the study, and what is asked of it."""
 
-    exact: ExactStudy
-    division: Division
-    error: ErrorPolicy
-    confidence: float
+    by: Estimator
 
-    @cached_property
-    def spread(self) -> Spread:
-        """The residual mean square that errors are judged by."""
-        df = self.division.residual_df
-        return Spread(float(self.division.residual_ss / df) if df > 0 else NO_FREEDOM, df)
+    @property
+    def exact(self) -> ExactStudy:
+        """The study in whole numbers."""
+        return self.by.exact
+
+    @property
+    def division(self) -> Division:
+        """Its sum of squares, divided."""
+        return self.by.division
 
     def result(self) -> Decomposition:
         """Put everything together."""
-        spread = self.spread
+        spread = self.by.spread
         residual_sd = spread.ms if isinstance(spread.ms, Undefined) else sqrt(spread.ms)
         total_ss, residual_ss = self.exact.total_ss, self.division.residual_ss
         explained = 1 - residual_ss / total_ss if total_ss else None
@@ -102,9 +100,9 @@ class _Work:
             layout=self.exact.layout,
             trials=self.exact.everything.n,
             balance=self.exact.balance,
-            error=self.error,
-            confidence=self.confidence,
-            equal_weight=self._estimates(*mean_rows(self.exact.layout, ()), of_mean=True)[0],
+            error=self.by.error,
+            confidence=self.by.confidence,
+            equal_weight=self.by.estimates(*mean_rows(self.exact.layout, ()), of_mean=True)[0],
             as_logged=self._as_logged(list(range(len(self.exact.cells)))),
             cells=tuple(self._cells()),
             terms=tuple(terms),
@@ -115,7 +113,7 @@ class _Work:
             comparisons=tuple(self._comparisons()),
             interactions=tuple(self._interactions()),
             simple_effects=tuple(self._simple_effects()),
-            notes=tuple(notes_of(self.exact, self.division, self.error)),
+            notes=tuple(notes_of(self.exact, self.division, self.by.error)),
         )
 
     def _cells(self) -> list[CellSummary]:
@@ -133,35 +131,6 @@ class _Work:
             )
         return summaries
 
-    def _estimates(self, rows: Whole, denominator: int, *, of_mean: bool) -> list[Estimate]:
-        values = self.division.fit.values(rows, denominator, of_mean=of_mean)
-        errors = self._errors(rows.astype(float) / denominator, values)
-        return [self._estimate(value, *error) for value, error in zip(values, errors, strict=True)]
-
-    def _errors(self, rows: npt.NDArray[np.float64], values: list[Number]) -> list[tuple[Number, Number]]:
-        """Give standard error and df of each row, by the policy; undefined wherever the value is."""
-        if self.error == "per-cell":
-            own = self.division.fit.own_variance(rows)
-            return [
-                (value, value) if isinstance(value, Undefined) else (_root(variance), df)
-                for value, (variance, df) in zip(values, own, strict=True)
-            ]
-        scale = self.spread.scale()
-        if isinstance(scale, Undefined):
-            return [(scale, scale)] * len(values)
-        variances = self.division.fit.pooled_variance(rows)
-        return [
-            (value, value) if isinstance(value, Undefined) else (sqrt(scale * variance), float(self.spread.df))
-            for value, variance in zip(values, variances, strict=True)
-        ]
-
-    def _estimate(self, value: Number, se: Number, df: Number) -> Estimate:
-        if isinstance(value, Undefined) or isinstance(se, Undefined) or isinstance(df, Undefined):
-            reason = next(part for part in (value, se, df) if isinstance(part, Undefined))
-            return Estimate(value, se, df, reason, reason)
-        reach = t_quantile((1 + self.confidence) / 2, df) * se
-        return Estimate(value, se, df, value - reach, value + reach)
-
     def _as_logged(self, cells: list[int]) -> Estimate:
         """Give the plain mean of all readings in some cells."""
         filled = [at for at in cells if self.exact.cells[at].n]
@@ -169,15 +138,15 @@ class _Work:
             nothing = Undefined("no trials here")
             return Estimate(nothing, nothing, nothing, nothing, nothing)
         n, mean = self.exact.mean_as_logged(filled)
-        if self.error == "per-cell":
+        if self.by.error == "per-cell":
             row = np.zeros((1, len(self.exact.cells)))
             row[0, filled] = self.exact.n[filled] / n
             variance, df = self.division.fit.own_variance(row)[0]
-            return self._estimate(mean, _root(variance), df)
-        scale = self.spread.scale()
+            return self.by.estimate(mean, root(variance), df)
+        scale = self.by.spread.scale()
         if isinstance(scale, Undefined):
-            return self._estimate(mean, scale, scale)
-        return self._estimate(mean, sqrt(scale / n), float(self.spread.df))
+            return self.by.estimate(mean, scale, scale)
+        return self.by.estimate(mean, sqrt(scale / n), float(self.by.spread.df))
 
     def _term(self, shares: TermShares) -> TermResult:
         names = tuple(self.exact.layout.factors[at].name for at in shares.term)
@@ -207,7 +176,7 @@ class _Work:
 
     def _offsets(self, term: Term) -> list[Offset]:
         rows, denominator = offset_rows(self.exact.layout, term)
-        estimates = self._estimates(rows, denominator, of_mean=False)
+        estimates = self.by.estimates(rows, denominator, of_mean=False)
         levels = term_levels(self.exact.layout, term)
         return [Offset(level, estimate) for level, estimate in zip(levels, estimates, strict=True)]
 
@@ -218,12 +187,12 @@ class _Work:
         if share.df == 0:
             return SumOfSquares(0, EMPTY_CELL, EMPTY_CELL, EMPTY_CELL, EMPTY_CELL)
         f = self._ratio(ss, share.df)
-        p = f if isinstance(f, Undefined) else f_upper(f, share.df, self.spread.df)
+        p = f if isinstance(f, Undefined) else f_upper(f, share.df, self.by.spread.df)
         return SumOfSquares(share.df, float(ss), float(ss / share.df), f, p)
 
     def _ratio(self, ss: Fraction | float, df: int) -> Number:
         """F, from sums of squares: exact until the last division where both are."""
-        scale = self.spread.scale()
+        scale = self.by.spread.scale()
         if isinstance(scale, Undefined):
             return scale
         return float((ss / df) / (self.division.residual_ss / self.division.residual_df))
@@ -234,7 +203,7 @@ class _Work:
         means = []
         for term in terms:
             rows, denominator = mean_rows(layout, term)
-            estimates = self._estimates(rows, denominator, of_mean=True)
+            estimates = self.by.estimates(rows, denominator, of_mean=True)
             for levels, row, estimate in zip(term_levels(layout, term), rows, estimates, strict=True):
                 cells = [int(at) for at in np.flatnonzero(row)]
                 n = int(self.exact.n[cells].sum())
@@ -249,7 +218,7 @@ class _Work:
             rows, denominator = mean_rows(self.exact.layout, (at,))
             differences, pairs = pair_rows(rows)
             values = self.division.fit.values(differences, denominator, of_mean=False)
-            errors = self._errors(differences.astype(float) / denominator, values)
+            errors = self.by.errors(differences.astype(float) / denominator, values)
             pooled = self.division.fit.pooled_variance(differences.astype(float) / denominator)
             for value, (se, df), variance, (first, second) in zip(values, errors, pooled, pairs, strict=True):
                 comparisons.append(
@@ -268,13 +237,13 @@ class _Work:
 
     def _tukey_kramer(self, value: Number, variance: float, means: int) -> FamilyInterval:
         """All pairs of a factor's levels at once, by the studentized range (Tukey 1953; Kramer 1956)."""
-        scale = self.spread.scale()
+        scale = self.by.spread.scale()
         if isinstance(value, Undefined) or isinstance(scale, Undefined):
             reason = value if isinstance(value, Undefined) else scale
             return FamilyInterval(reason, reason, reason)
         se = sqrt(scale * variance)
-        p = studentized_range_upper(abs(value) / se * sqrt(2), means, self.spread.df)
-        reach = studentized_range_quantile(self.confidence, means, self.spread.df) / sqrt(2) * se
+        p = studentized_range_upper(abs(value) / se * sqrt(2), means, self.by.spread.df)
+        reach = studentized_range_quantile(self.by.confidence, means, self.by.spread.df) / sqrt(2) * se
         return FamilyInterval(p, value - reach, value + reach)
 
     def _interactions(self) -> list[InteractionContrast]:
@@ -285,7 +254,7 @@ class _Work:
             if not pairs:
                 continue
             denominator = prod(len(f.levels) for at, f in enumerate(factors) if at not in (first, second))
-            estimates = self._estimates(rows, denominator, of_mean=False)
+            estimates = self.by.estimates(rows, denominator, of_mean=False)
             for ((a, b), (c, d)), estimate in zip(pairs, estimates, strict=True):
                 names = (factors[first].name, factors[second].name)
                 one, other = factors[first].levels, factors[second].levels
@@ -300,7 +269,7 @@ class _Work:
                 continue
             for levels, cells in slice_cells(layout, at):
                 df, f = self._simple_effect(cells)
-                p = f if isinstance(f, Undefined) else f_upper(f, df, self.spread.df)
+                p = f if isinstance(f, Undefined) else f_upper(f, df, self.by.spread.df)
                 effects.append(SimpleEffect(factor.name, levels, df, f, p))
         return effects
 
@@ -312,12 +281,8 @@ class _Work:
         df, ss = self.division.fit.among(filled)
         if df == 0:
             return 0, EMPTY_CELL
-        scale = self.spread.scale()
+        scale = self.by.spread.scale()
         return df, scale if isinstance(scale, Undefined) else ss / df / scale
-
-
-def _root(variance: Number) -> Number:
-    return variance if isinstance(variance, Undefined) else sqrt(variance)
 
 
 def _unadjusted(value: Number, se: Number, df: Number) -> Number:
