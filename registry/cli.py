@@ -17,7 +17,9 @@ from typing import TYPE_CHECKING, TypeAlias
 from registry.errors import Fault, InputRefused, RegistryError
 
 if TYPE_CHECKING:
+    from registry.services.decompose_file import FileAnswer
     from registry.services.opening import Database
+    from registry.services.recurrence_file import RecurrenceAnswer
 
 Answer = Callable[[argparse.Namespace], int]
 Commands: TypeAlias = "argparse._SubParsersAction[argparse.ArgumentParser]"
@@ -46,6 +48,7 @@ def build_parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action="version", version=f"weftbook {version('weftbook')}")
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     _add_decompose(commands)
+    _add_recurrence(commands)
     _add_demo(commands)
     _add_serve(commands)
     _add_upkeep(commands)
@@ -72,7 +75,45 @@ def _decompose(wish: argparse.Namespace) -> int:
     answer = decompose_file(
         FileWish(wish.file, wish.response, tuple(wish.factor), wish.block, wish.step, wish.error, wish.confidence)
     )
-    if wish.json:
+    return _print_answer(answer, as_json=wish.json)
+
+
+def _add_recurrence(commands: Commands) -> None:
+    parser = commands.add_parser("recurrence", help="say which interactions are seen again over studies in one table")
+    parser.add_argument("file", metavar="FILE", type=Path, help="CSV file or workbook with one trial a row")
+    parser.add_argument("--study", metavar="COL", required=True, help="column that tells studies apart, in date order")
+    parser.add_argument("--response", metavar="COL", required=True, help="column of readings")
+    parser.add_argument("--factor", metavar="COL", action="append", required=True, help="column of a factor; repeat")
+    parser.add_argument("--block", metavar="COL", help="column of a block, allowed for but not crossed")
+    parser.add_argument("--error", choices=("pooled", "per-cell"), default="pooled", help="where errors come from")
+    parser.add_argument("--margin", required=True, help="smallest change of a difference that matters")
+    parser.add_argument("--fdr", type=float, default=0.05, help="false discovery rate over the board, 0.05 if left out")
+    parser.add_argument("--json", action="store_true", help="answer as a record to script against")
+    parser.set_defaults(answer=_recurrence)
+
+
+def _recurrence(wish: argparse.Namespace) -> int:
+    from registry.services.recurrence_file import RecurrenceWish, recurrence_file
+
+    return _print_answer(
+        recurrence_file(
+            RecurrenceWish(
+                path=wish.file,
+                study=wish.study,
+                response=wish.response,
+                factors=tuple(wish.factor),
+                block=wish.block,
+                error=wish.error,
+                margin=wish.margin,
+                fdr=wish.fdr,
+            )
+        ),
+        as_json=wish.json,
+    )
+
+
+def _print_answer(answer: FileAnswer | RecurrenceAnswer, *, as_json: bool) -> int:
+    if as_json:
         json.dump(answer.record(), sys.stdout, ensure_ascii=False, allow_nan=False, indent=1)
         print()
     else:

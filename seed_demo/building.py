@@ -12,6 +12,7 @@ from uuid import UUID
 
 from registry.services.access import Role
 from registry.services.import_check import ColumnChoice
+from registry.services.levels import rename_level, series_levels
 from registry.services.opening import Database
 from registry.services.people import Person, add_person, grant
 from registry.services.series_pages import SeriesDraft, new_series
@@ -21,11 +22,12 @@ from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft
 from registry.services.trial_edit import set_aside_trial
 from registry.services.trial_import import read_upload, run_import
 from registry.services.trial_log import MOST_AT_ONCE, TrialEntry, log_trials
-from seed_demo.scenario import MARGIN, SHIFT, STUDIES, PlannedStudy
+from seed_demo.scenario import MARGIN, RENAMED, SHIFT, STUDIES, Levels, PlannedStudy
 
-SEED = 20260112
+SEED = 20241014
 ZONE = "Europe/Copenhagen"
-TOURS_A_DAY = 8
+TOURS_A_DAY = 24
+STEP = {"min": "0.1", "s": "1"}
 
 
 @dataclass(frozen=True)
@@ -43,7 +45,7 @@ class _Tour:
     """One simulated pick tour."""
 
     levels: dict[str, str]
-    minutes: str
+    reading: str
     wrong_pick: str
     happened_at: datetime
 
@@ -95,6 +97,8 @@ def _build_study(
     database: Database, people: DemoPeople, series_id: int, planned: PlannedStudy, *, rng: Random, now: datetime
 ) -> None:
     made_at = min(_morning(planned, days=-7), now)
+    if planned.renames:
+        _rename(database, people, series_id, now=made_at)
     study_id = new_study(database, people.analyst, series_id, _draft(planned), now=made_at)
     if planned.status == "planned":
         return
@@ -121,14 +125,26 @@ def _build_study(
         )
 
 
+def _rename(database: Database, people: DemoPeople, series_id: int, *, now: datetime) -> None:
+    """Call the return walk what the crews call it by now."""
+    before, after = RENAMED
+    walk = next(
+        factor for factor in series_levels(database, people.analyst, series_id).factors if factor.name == "walk"
+    )
+    level = next(level for level in walk.levels if level.name == before)
+    rename_level(
+        database, people.analyst, series_id, level.id, name=after, reason="that is what the crews call it", now=now
+    )
+
+
 def _draft(planned: PlannedStudy) -> StudyDraft:
     factors = [FactorDraft(name, "treatment", levels) for name, levels in planned.factors.items()]
     if planned.block:
         factors.append(FactorDraft("shift", "block", SHIFT))
     factors += [FactorDraft(name, "held", (level,)) for name, level in planned.held.items()]
     responses = [
-        ResponseDraft("minutes", "minutes per tour, from the first scan to the drop", "min", "0.1", MARGIN, "lower",
-                      "measured", "primary")
+        ResponseDraft("tour time", "time per tour, from the first scan to the drop", planned.unit,
+                      STEP[planned.unit], MARGIN[planned.unit], "lower", "measured", "primary")
     ]  # fmt: skip
     if planned.guard:
         responses.append(
@@ -142,24 +158,36 @@ def _draft(planned: PlannedStudy) -> StudyDraft:
 def _tours(planned: PlannedStudy, rng: Random) -> Iterator[_Tour]:
     """Run the tours of a study in random order, a set of all combinations after another."""
     order: list[dict[str, str]] = []
-    for _ in range(planned.per_cell):
-        complete = [dict(cell) for cell in planned.cells if not _skipped(planned, cell)]
+    for complete_set in range(planned.per_cell):
+        complete = [dict(cell) for cell in planned.cells if not _never_run(planned, cell)]
+        complete += [cell for cell in complete if complete_set < _more(planned, cell)]
         rng.shuffle(complete)
         order += complete
     for place, levels in enumerate(order[: round(len(order) * planned.share)]):
         yield _tour(planned, levels, place, rng)
 
 
-def _skipped(planned: PlannedStudy, cell: dict[str, str]) -> bool:
-    return any(all(cell[name] == level for name, level in skipped.items()) for skipped in planned.skipped)
+def _never_run(planned: PlannedStudy, cell: dict[str, str]) -> bool:
+    return any(all(cell[name] == level for name, level in levels.items()) for levels in planned.never_run)
+
+
+def _more(planned: PlannedStudy, cell: dict[str, str]) -> int:
+    """Say how many more trials than planned a combination got."""
+    return max((more for pair, more in planned.more.items() if set(pair) <= set(cell.values())), default=0)
 
 
 def _tour(planned: PlannedStudy, levels: dict[str, str], place: int, rng: Random) -> _Tour:
-    minutes = max(1.0, planned.true_mean(levels) + rng.gauss(0.0, planned.truth.sd))
+    minutes = simulated_minutes(planned, levels, rng)
+    reading = f"{minutes:.1f}" if planned.unit == "min" else f"{60 * minutes:.0f}"
     day, turn = divmod(place, TOURS_A_DAY)
-    happened = _morning(planned, days=day) + timedelta(minutes=30 + 55 * turn + rng.randrange(20))
+    happened = _morning(planned, days=day) + timedelta(minutes=10 + 20 * turn + rng.randrange(15))
     wrong = "yes" if rng.random() < planned.truth.wrong_pick else "no"
-    return _Tour(levels, f"{minutes:.1f}", wrong, happened)
+    return _Tour(levels, reading, wrong, happened)
+
+
+def simulated_minutes(planned: PlannedStudy, levels: Levels, rng: Random) -> float:
+    """Draw the minutes of one tour: the truth and a noise of the site's spread."""
+    return max(1.0, planned.true_mean(levels) + rng.gauss(0.0, planned.truth.sd))
 
 
 def _log(
@@ -170,7 +198,7 @@ def _log(
         TrialEntry(
             key=str(UUID(int=rng.getrandbits(128), version=4)),
             levels=tour.levels,
-            readings={"minutes": tour.minutes} | ({"wrong pick": tour.wrong_pick} if planned.guard else {}),
+            readings={"tour time": tour.reading} | ({"wrong pick": tour.wrong_pick} if planned.guard else {}),
             happened_at=tour.happened_at,
         )
         for tour in tours
@@ -196,13 +224,13 @@ def _import(
     names = list(tours[0].levels)
     text = StringIO()
     writer = csv.writer(text)
-    writer.writerow([*names, "minutes", "when"])
+    writer.writerow([*names, "tour time", "when"])
     for tour in tours:
-        writer.writerow([*tour.levels.values(), tour.minutes, tour.happened_at.isoformat()])
+        writer.writerow([*tour.levels.values(), tour.reading, tour.happened_at.isoformat()])
     last = tours[-1].happened_at
     job = read_upload(
         database, people.analyst, study_id, name="spring tours.csv", content=text.getvalue().encode(), now=last
     )
-    choices = [*(ColumnChoice("factor", name) for name in names), ColumnChoice("response", "minutes"),
+    choices = [*(ColumnChoice("factor", name) for name in names), ColumnChoice("response", "tour time"),
                ColumnChoice("happened_at")]  # fmt: skip
     run_import(database, people.analyst, study_id, job, choices=choices, round_offered=False, now=last)

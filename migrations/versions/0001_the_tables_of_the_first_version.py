@@ -290,7 +290,9 @@ def upgrade() -> None:
         sa.Column("name", sa.String(length=200), nullable=False),
         sa.Column("definition", sa.Text(), nullable=False),
         sa.Column("running", sa.Text(), nullable=False, comment="what running this level means on the floor"),
+        sa.Column("replaces_id", KEY, nullable=True, comment="the level that this one was until its meaning changed"),
         sa.ForeignKeyConstraint(["factor_id"], ["factor.id"], name=op.f("fk_level_factor_id")),
+        sa.ForeignKeyConstraint(["replaces_id"], ["level.id"], name=op.f("fk_level_replaces_id")),
         sa.PrimaryKeyConstraint("id", name=op.f("pk_level")),
         sa.UniqueConstraint("factor_id", "name", name=op.f("uq_level_factor_id_name")),
     )

@@ -26,6 +26,11 @@ def t_two_sided(statistic: float, df: float) -> float:
     return float(2.0 * special.stdtr(df, -abs(statistic)))
 
 
+def t_upper(statistic: float, df: float) -> float:
+    """Give the chance that t is at least this large."""
+    return float(special.stdtr(df, -statistic))
+
+
 def f_upper(statistic: float, df1: float, df2: float) -> float:
     """Give the chance that F is at least this large."""
     return float(special.fdtrc(df1, df2, statistic))

@@ -22,6 +22,15 @@ _CHUNK = 20_000
 
 
 @dataclass(frozen=True)
+class _Sums:
+    """Tallies by level places, the anchor they are told from, and how many rows had no reading."""
+
+    tallies: dict[tuple[int, ...], Tally]
+    anchor: int
+    left_out: int
+
+
+@dataclass(frozen=True)
 class Columns:
     """Which columns of a table are what; ``step`` as typed, or nothing to read it off the decimals."""
 
@@ -29,6 +38,13 @@ class Columns:
     factors: tuple[str, ...]
     block: str | None = None
     step: str | None = None
+    study: str | None = None
+
+    @property
+    def named(self) -> tuple[str, ...]:
+        """The columns that a row is told by, in the order of a key: study, block, factors, response."""
+        leading = tuple(name for name in (self.study, self.block) if name)
+        return (*leading, *self.factors, self.response)
 
 
 @dataclass(frozen=True)
@@ -40,6 +56,16 @@ class TalliedTable:
     left_out: int
 
 
+@dataclass(frozen=True)
+class TalliedTablePart:
+    """One study of a table: its tallies, what it held at one level, and how many rows had no reading."""
+
+    name: str
+    study: TalliedStudy
+    held: tuple[Factor, ...]
+    left_out: int
+
+
 def tally_table(path: Path, columns: Columns) -> TalliedTable:
     """Tally every trial of a CSV file or workbook.
 
@@ -47,27 +73,66 @@ def tally_table(path: Path, columns: Columns) -> TalliedTable:
     Raises InputRefused with the line and column of whatever is wrong: a column that is
     not there, a row too long or short, an empty level, a text that is no number.
     """
+    counts, step = _counted(path, columns)
+    block, factors, sums = _levels_and_sums(path, columns, counts, step)
+    return TalliedTable(
+        TalliedStudy(Layout(factors, block), step.fraction, sums.anchor, sums.tallies), step, sums.left_out
+    )
+
+
+def tally_studies(path: Path, columns: Columns) -> tuple[TalliedTablePart, ...]:
+    """Tally several studies that stand in one table, told apart by the study column.
+
+    Each study crosses the levels that its own rows have; a factor that has a single one
+    there was held at it. Studies stand in the order of their first rows. Raises as
+    ``tally_table`` does.
+    """
+    counts, step = _counted(path, columns)
+    of_study: dict[str, Counter[tuple[str, ...]]] = {}
+    for key, times in counts.items():
+        if not key[0].strip():
+            continue  # A row that says nothing in any of these columns is not a trial.
+        of_study.setdefault(key[0].strip(), Counter())[key] += times
+    return tuple(_part(path, columns, name, some, step) for name, some in of_study.items())
+
+
+def _part(path: Path, columns: Columns, name: str, counts: Counter[tuple[str, ...]], step: Step) -> TalliedTablePart:
+    block, factors, sums = _levels_and_sums(path, columns, counts, step, of=f"study {name}")
+    parts = [*([block] if block else []), *factors]
+    varied = [place for place, factor in enumerate(parts) if len(factor.levels) > 1]
+    crossed = tuple(parts[place] for place in varied if parts[place] is not block)
+    layout = Layout(crossed, block if block and len(block.levels) > 1 else None)
+    tallies = {tuple(cell[place] for place in varied): tally for cell, tally in sums.tallies.items()}
+    held = tuple(factor for factor in factors if len(factor.levels) == 1)
+    return TalliedTablePart(name, TalliedStudy(layout, step.fraction, sums.anchor, tallies), held, sums.left_out)
+
+
+def _counted(path: Path, columns: Columns) -> tuple[Counter[tuple[str, ...]], Step]:
     _refuse_one_column_twice(columns)
     counts = _count_rows(path, columns)
     step = Step.parse(columns.step) if columns.step else _step_of(path, columns, counts)
-    names = [*([columns.block] if columns.block else []), *columns.factors]
-    levels: list[dict[str, int]] = [{} for _ in names]
     _refuse_no_level(path, columns, counts)
-    # Levels keep the order in which they first appear among the rows that have a reading.
+    return counts, step
+
+
+def _levels_and_sums(
+    path: Path, columns: Columns, counts: Counter[tuple[str, ...]], step: Step, *, of: str = ""
+) -> tuple[Factor | None, tuple[Factor, ...], _Sums]:
+    """Name the levels in the order in which they first appear among rows with a reading, and tally the rows."""
+    names = [name for name in columns.named[:-1] if name != columns.study]
+    levels: list[dict[str, int]] = [{} for _ in names]
     for key in counts:
         if key[-1].strip():
-            for known, level in zip(levels, key, strict=False):
+            for known, level in zip(levels, key[-1 - len(names) : -1], strict=True):
                 known.setdefault(level.strip(), len(known))
-    tallies, anchor, left_out = _tally(path, columns, counts, levels, step)
+    sums = _tally(path, columns, counts, levels, step, of=of)
     factors = [Factor(name, tuple(known)) for name, known in zip(names, levels, strict=True)]
     block = factors.pop(0) if columns.block else None
-    layout = Layout(tuple(factors), block)
-    return TalliedTable(TalliedStudy(layout, step.fraction, anchor, tallies), step, left_out)
+    return block, tuple(factors), sums
 
 
 def _refuse_one_column_twice(columns: Columns) -> None:
-    named = [*columns.factors, columns.response, *([columns.block] if columns.block else [])]
-    twice = [name for name, times in Counter(named).items() if times > 1]
+    twice = [name for name, times in Counter(columns.named).items() if times > 1]
     if twice:
         raise InputRefused(Fault("columns", f"{twice[0]!r} is named twice", "give each column one part to play"))
 
@@ -136,14 +201,13 @@ def _bad_line(path: Path) -> str:
 def _places(path: Path, heads: Sequence[str], columns: Columns) -> list[int]:
     """Find the columns by their heads: block, factors, response."""
     heads = [head.strip() for head in heads]
-    named = [*([columns.block] if columns.block else []), *columns.factors, columns.response]
-    for name in named:
+    for name in columns.named:
         if heads.count(name) != 1:
             given = "there is no such column" if name not in heads else f"{heads.count(name)} columns have this head"
             raise InputRefused(
                 Fault(f"{path.name}, column {name!r}", given, "its columns are " + ", ".join(map(repr, heads)))
             )
-    return [heads.index(name) for name in named]
+    return [heads.index(name) for name in columns.named]
 
 
 def _kept_rows(path: Path, chunk: list[Sequence[str]], width: int) -> list[Sequence[str]]:
@@ -175,9 +239,8 @@ def _where(path: Path, columns: Columns, key: tuple[str, ...], place: int) -> st
     rows = _lined(path)
     _, heads = next(rows)
     wanted = itemgetter(*_places(path, heads, columns))
-    named = [*([columns.block] if columns.block else []), *columns.factors, columns.response]
     line = next(line for line, row in rows if len(row) == len(heads) and wanted(row) == key)
-    return f"{path.name}, line {line}, column {named[place]}"
+    return f"{path.name}, line {line}, column {columns.named[place]}"
 
 
 def _refuse_no_level(path: Path, columns: Columns, counts: Iterable[tuple[str, ...]]) -> None:
@@ -217,13 +280,16 @@ def _tally(
     counts: Counter[tuple[str, ...]],
     levels: list[dict[str, int]],
     step: Step,
-) -> tuple[dict[tuple[int, ...], Tally], int, int]:
+    *,
+    of: str,
+) -> _Sums:
     """Tally every distinct row as often as it stands in the file."""
     read = steps_reader(step)
     known: dict[str, int] = {}
     sums: dict[tuple[int, ...], list[int]] = {}
     anchor: int | None = None
     left_out = 0
+    first = -1 - len(levels)
     for key, times in counts.items():
         text = key[-1]
         steps = known.get(text)
@@ -235,7 +301,7 @@ def _tally(
         if anchor is None:
             anchor = steps
         distance = steps - anchor
-        cell = tuple([places[level.strip()] for places, level in zip(levels, key, strict=False)])
+        cell = tuple([places[level.strip()] for places, level in zip(levels, key[first:-1], strict=True)])
         found = sums.get(cell)
         if found is None:
             found = sums[cell] = [0, 0, 0]
@@ -243,10 +309,9 @@ def _tally(
         found[1] += distance * times
         found[2] += distance * distance * times
     if anchor is None:
-        raise InputRefused(
-            Fault(f"{path.name}, column {columns.response}", "no row has a reading", "give at least one")
-        )
-    return {cell: EMPTY.merge(Tally(*found)) for cell, found in sums.items()}, anchor, left_out
+        where = ", ".join(part for part in (path.name, of, f"column {columns.response}") if part)
+        raise InputRefused(Fault(where, "no row has a reading", "give at least one"))
+    return _Sums({cell: EMPTY.merge(Tally(*found)) for cell, found in sums.items()}, anchor, left_out)
 
 
 def _steps(path: Path, columns: Columns, key: tuple[str, ...], read: Any, step: Step) -> int:

@@ -75,23 +75,32 @@ def _sentence(row: EventRow) -> str:
         case "trials_imported":
             content = json.loads(row.after or "{}")
             return f"Trials {content.get('first')} to {content.get('last')} imported"
-        case "reading_corrected" if row.before is None:
-            return f"{trial}: {response} added, {row.after}"
-        case "reading_corrected":
-            return f"{trial}: {response} corrected from {row.before} to {row.after}"
-        case "reading_set_aside":
-            return f"{trial}: {response} {row.before} set aside"
-        case "reading_restored":
-            return f"{trial}: {response} {row.after} restored"
+        case "reading_corrected" | "reading_set_aside" | "reading_restored":
+            return f"{trial}: {response} {_of_reading(row)}"
         case "step_changed":
             return f"Step of {response} changed from {row.before} to {row.after}"
         case "plan_locked":
             plan = json.loads(row.after or "{}")
             return f"Plan locked: {plan.get('per_cell')} trials a combination, {plan.get('planned')} in all"
+        case "level_renamed":
+            before, after = json.loads(row.before or "{}"), json.loads(row.after or "{}")
+            return f"{before.get('factor')}: {before.get('level')} is called {after.get('level')} from now on"
         case "study_closed":
             return f"Study closed: {(row.after or '').replace('_', ' ')}"
         case _:
             return _PLAIN[row.what].format(trial=trial)
+
+
+def _of_reading(row: EventRow) -> str:
+    match row.what:
+        case "reading_corrected" if row.before is None:
+            return f"added, {row.after}"
+        case "reading_corrected":
+            return f"corrected from {row.before} to {row.after}"
+        case "reading_set_aside":
+            return f"{row.before} set aside"
+        case _:
+            return f"{row.after} restored"
 
 
 _PLAIN = {

@@ -7,7 +7,7 @@ from typing import Any
 
 from registry.analysis.decomposition import decompose
 from registry.analysis.findings import Finding, judge_difference, judge_interaction
-from registry.analysis.results import Decomposition, ErrorPolicy, SumOfSquares
+from registry.analysis.results import Decomposition, SumOfSquares
 from registry.analysis.undefined import Number, Undefined
 from registry.errors import Fault, NotFound
 from registry.services.build_up import BuildUp, build_up
@@ -16,12 +16,10 @@ from registry.services.figures import Figure, Interval, figure, interval
 from registry.services.people import Person
 from registry.services.sentences import may_judge, places_of, sentences_of, why_not_judged
 from registry.services.study_card import ResponseLine, StudyCard, open_study_card
+from registry.services.tallied import policy_of, tallied_study
 from registry.storage.engine import Database
 from registry.storage.frame import FrameResponse, StudyFrame, fetch_frame
 from registry.storage.tallies import fetch_tallies
-from registry.trials.factors import Factor
-from registry.trials.layouts import Layout
-from registry.trials.tallies import TalliedStudy
 from registry.trials.terms import term_name
 
 
@@ -129,7 +127,7 @@ def study_report(
     if not any(tally.n for tally in tallied.tallies.values()):
         said = (f"No reading of {chosen.name} counts yet.",)
         return StudyReport(card, line, places_of(line), said, judged, why_not_judged(card), None)
-    result = decompose(tallied, error=error_policy(card))
+    result = decompose(tallied, error=policy_of(card.spread, blocked=card.block is not None))
     return StudyReport(
         card=card,
         response=line,
@@ -149,21 +147,6 @@ def _chosen(frame: StudyFrame, name: str | None) -> FrameResponse:
         names = ", ".join(response.name for response in frame.responses)
         raise NotFound(Fault("response", f"this study has no response {name!r}", f"its responses are {names}"))
     return found
-
-
-def error_policy(card: StudyCard) -> ErrorPolicy:
-    """Give the study's one spread policy as the analysis calls it; shared until a plan says otherwise."""
-    return "per-cell" if card.spread == "own" and card.block is None else "pooled"
-
-
-def tallied_study(frame: StudyFrame, response: FrameResponse, tallies: dict[int, Any]) -> TalliedStudy:
-    """Arrange stored tallies as an analysis takes them: by level places, the block's in front."""
-    factors = tuple(Factor(factor.name, factor.levels) for factor in frame.treatments)
-    block = Factor(frame.block.name, frame.block.levels) if frame.block else None
-    ranks = frame.ranks
-    # A cell lists its ranks in the order of the chosen factors, where the block is the last one.
-    keyed = {((ranks[cell][-1], *ranks[cell][:-1]) if block else ranks[cell]): tally for cell, tally in tallies.items()}
-    return TalliedStudy(Layout(factors, block), response.step.fraction, response.anchor or 0, keyed)
 
 
 def _findings(

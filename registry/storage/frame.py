@@ -25,13 +25,18 @@ from registry.trials.readings import Step
 
 @dataclass(frozen=True)
 class FrameFactor:
-    """One factor of a study; ``known_as`` gives the rank of every name, aliases included."""
+    """One factor of a study; ``known_as`` gives the rank of every name, aliases included.
+
+    ``factor_id`` and ``level_ids`` are the lasting identities that other studies share.
+    """
 
     position: int
     name: str
     role: str
     levels: tuple[str, ...]
     known_as: Mapping[str, int]
+    factor_id: int
+    level_ids: tuple[int, ...]
 
 
 @dataclass(frozen=True)
@@ -95,74 +100,95 @@ class StudyFrame:
 
 def fetch_frame(session: Session, study_id: int) -> StudyFrame:
     """Read a study's frame in a handful of queries, whatever its size."""
-    return StudyFrame(study_id, _factors(session, study_id), _responses(session, study_id), _cells(session, study_id))
+    return fetch_frames(session, [study_id])[study_id]
 
 
-def _factors(session: Session, study_id: int) -> tuple[FrameFactor, ...]:
-    levels: dict[int, list[str]] = defaultdict(list)
-    known_as: dict[int, dict[str, int]] = defaultdict(dict)
+def fetch_frames(session: Session, study_ids: Sequence[int]) -> dict[int, StudyFrame]:
+    """Read the frames of several studies in the same handful of queries, however many they are."""
+    factors = _factors(session, study_ids)
+    responses = _responses(session, study_ids)
+    cells = _cells(session, study_ids)
+    return {key: StudyFrame(key, tuple(factors[key]), tuple(responses[key]), cells[key]) for key in study_ids}
+
+
+def _factors(session: Session, study_ids: Sequence[int]) -> dict[int, list[FrameFactor]]:
+    levels: dict[tuple[int, int], list[tuple[int, str]]] = defaultdict(list)
+    known_as: dict[tuple[int, int], dict[str, int]] = defaultdict(dict)
     rows = session.execute(
-        select(StudyLevel.position, StudyLevel.rank, Level.name)
+        select(StudyLevel.study_id, StudyLevel.position, StudyLevel.rank, Level.id, Level.name)
         .join(Level, Level.id == StudyLevel.level_id)
-        .where(StudyLevel.study_id == study_id)
-        .order_by(StudyLevel.position, StudyLevel.rank)
+        .where(StudyLevel.study_id.in_(study_ids))
+        .order_by(StudyLevel.study_id, StudyLevel.position, StudyLevel.rank)
     )
-    for position, rank, name in rows:
-        levels[position].append(name)
-        known_as[position][name] = rank
+    for study_id, position, rank, level_id, name in rows:
+        levels[study_id, position].append((level_id, name))
+        known_as[study_id, position][name] = rank
     aliases = session.execute(
-        select(StudyLevel.position, StudyLevel.rank, LevelAlias.name)
+        select(StudyLevel.study_id, StudyLevel.position, StudyLevel.rank, LevelAlias.name)
         .join(LevelAlias, LevelAlias.level_id == StudyLevel.level_id)
-        .where(StudyLevel.study_id == study_id)
+        .where(StudyLevel.study_id.in_(study_ids))
     )
-    for position, rank, name in aliases:
-        known_as[position].setdefault(name, rank)
+    for study_id, position, rank, name in aliases:
+        known_as[study_id, position].setdefault(name, rank)
+    found: dict[int, list[FrameFactor]] = defaultdict(list)
     factors = session.execute(
-        select(StudyFactor.position, StudyFactor.role, Factor.name)
+        select(StudyFactor.study_id, StudyFactor.position, StudyFactor.role, Factor.id, Factor.name)
         .join(Factor, Factor.id == StudyFactor.factor_id)
-        .where(StudyFactor.study_id == study_id)
-        .order_by(StudyFactor.position)
+        .where(StudyFactor.study_id.in_(study_ids))
+        .order_by(StudyFactor.study_id, StudyFactor.position)
     )
-    return tuple(
-        FrameFactor(row.position, row.name, row.role, tuple(levels[row.position]), known_as[row.position])
-        for row in factors
-    )
-
-
-def _responses(session: Session, study_id: int) -> tuple[FrameResponse, ...]:
-    rows: Sequence[tuple[StudyResponse, Response]] = [
-        (row[0], row[1])
-        for row in session.execute(
-            select(StudyResponse, Response)
-            .join(Response, Response.id == StudyResponse.response_id)
-            .where(StudyResponse.study_id == study_id)
-            .order_by(StudyResponse.rank)
+    for study_id, position, role, factor_id, name in factors:
+        of_factor = levels[study_id, position]
+        found[study_id].append(
+            FrameFactor(
+                position,
+                name,
+                role,
+                tuple(level for _, level in of_factor),
+                known_as[study_id, position],
+                factor_id,
+                tuple(level_id for level_id, _ in of_factor),
+            )
         )
-    ]
-    return tuple(
-        FrameResponse(
-            response_id=used.response_id,
-            name=response.name,
-            about=response.about,
-            kind=response.kind,
-            part=response.part,
-            wanted=response.wanted,
-            unit=used.unit,
-            step=Step.parse(used.step),
-            anchor=used.anchor,
-            margin=used.margin,
-        )
-        for used, response in rows
-    )
+    return found
 
 
-def _cells(session: Session, study_id: int) -> dict[tuple[int, ...], int]:
-    ranks: dict[int, list[int]] = defaultdict(list)
+def _responses(session: Session, study_ids: Sequence[int]) -> dict[int, list[FrameResponse]]:
+    found: dict[int, list[FrameResponse]] = defaultdict(list)
     rows = session.execute(
-        select(CellLevel.cell, CellLevel.rank)
-        .where(CellLevel.study_id == study_id)
-        .order_by(CellLevel.cell, CellLevel.position)
+        select(StudyResponse, Response)
+        .join(Response, Response.id == StudyResponse.response_id)
+        .where(StudyResponse.study_id.in_(study_ids))
+        .order_by(StudyResponse.study_id, StudyResponse.rank)
     )
-    for cell, rank in rows:
-        ranks[cell].append(rank)
-    return {tuple(of_cell): cell for cell, of_cell in ranks.items()}
+    for used, response in rows:
+        found[used.study_id].append(
+            FrameResponse(
+                response_id=used.response_id,
+                name=response.name,
+                about=response.about,
+                kind=response.kind,
+                part=response.part,
+                wanted=response.wanted,
+                unit=used.unit,
+                step=Step.parse(used.step),
+                anchor=used.anchor,
+                margin=used.margin,
+            )
+        )
+    return found
+
+
+def _cells(session: Session, study_ids: Sequence[int]) -> dict[int, dict[tuple[int, ...], int]]:
+    ranks: dict[tuple[int, int], list[int]] = defaultdict(list)
+    rows = session.execute(
+        select(CellLevel.study_id, CellLevel.cell, CellLevel.rank)
+        .where(CellLevel.study_id.in_(study_ids))
+        .order_by(CellLevel.study_id, CellLevel.cell, CellLevel.position)
+    )
+    for study_id, cell, rank in rows:
+        ranks[study_id, cell].append(rank)
+    found: dict[int, dict[tuple[int, ...], int]] = defaultdict(dict)
+    for (study_id, cell), of_cell in ranks.items():
+        found[study_id][tuple(of_cell)] = cell
+    return found

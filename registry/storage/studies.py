@@ -161,7 +161,7 @@ def level_named(session: Session, factor_id: int, name: str) -> Level:
             .where(Level.factor_id == factor_id, LevelAlias.name == name)
         ).first()
     if found is None:
-        found = Level(factor_id=factor_id, name=name, definition="", running="")
+        found = Level(factor_id=factor_id, name=name, definition="", running="", replaces_id=None)
         session.add(found)
         session.flush()  # The study's levels need the key.
     return found

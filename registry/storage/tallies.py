@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from sqlalchemy import BigInteger, ColumnClause, Table, and_, bindparam, func, literal_column, select, update
@@ -30,12 +30,22 @@ class TallyKey:
 
 def fetch_tallies(session: Session, study_id: int, response_id: int) -> dict[int, Tally]:
     """Give the tally of every cell that has had a reading of the response, by cell number."""
+    return fetch_tallies_of(session, [study_id], response_id)[study_id]
+
+
+def fetch_tallies_of(session: Session, study_ids: Sequence[int], response_id: int) -> dict[int, dict[int, Tally]]:
+    """Give the tallies of one response in several studies, in one query: by study, then by cell number."""
     rows = session.execute(
-        select(TallyRow.cell, TallyRow.n, TallyRow.total, TallyRow.squares_high, TallyRow.squares_low)
-        .where(TallyRow.study_id == study_id, TallyRow.response_id == response_id)
-        .order_by(TallyRow.cell)
+        select(
+            TallyRow.study_id, TallyRow.cell, TallyRow.n, TallyRow.total, TallyRow.squares_high, TallyRow.squares_low
+        )
+        .where(TallyRow.study_id.in_(study_ids), TallyRow.response_id == response_id)
+        .order_by(TallyRow.study_id, TallyRow.cell)
     )
-    return {row.cell: Tally(row.n, row.total, from_limbs(row.squares_high, row.squares_low)) for row in rows}
+    found: dict[int, dict[int, Tally]] = {study_id: {} for study_id in study_ids}
+    for row in rows:
+        found[row.study_id][row.cell] = Tally(row.n, row.total, from_limbs(row.squares_high, row.squares_low))
+    return found
 
 
 def change_tallies(session: Session, study_id: int, changes: Mapping[TallyKey, Tally]) -> None:

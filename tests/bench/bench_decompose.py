@@ -24,7 +24,7 @@ import statsmodels.formula.api as smf
 from registry.analysis.decomposition import decompose
 from registry.analysis.results import Decomposition
 from registry.services.opening import open_registry
-from registry.services.study_report import tallied_study
+from registry.services.tallied import tallied_study
 from registry.services.trial_log import write_trials
 from registry.services.upkeep import upgrade
 from registry.storage.frame import fetch_frame

@@ -72,6 +72,9 @@ class Level(Base):
     name: Mapped[Name]
     definition: Mapped[Long]
     running: Mapped[Long] = mapped_column(comment="what running this level means on the floor")
+    replaces_id: Mapped[int | None] = mapped_column(
+        ForeignKey("level.id"), comment="the level that this one was until its meaning changed"
+    )
 
 
 class LevelAlias(Base):

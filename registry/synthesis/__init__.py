@@ -1,0 +1,1 @@
+"""Many studies: common ground, change, pooling, recurrence."""
