@@ -41,7 +41,7 @@ class DemoPeople:
 
 
 @dataclass(frozen=True)
-class _Tour:
+class Tour:
     """One simulated pick tour."""
 
     levels: dict[str, str]
@@ -104,7 +104,7 @@ def _build_study(
         return
     lock_plan(database, people.analyst, study_id, PlanDraft(str(planned.per_cell)), now=made_at)
     start_study(database, people.analyst, study_id, now=_morning(planned))
-    tours = list(_tours(planned, rng))
+    tours = list(tours_of(planned, rng))
     if planned.imported:
         _import(database, people, study_id, planned, tours)
     else:
@@ -155,7 +155,7 @@ def _draft(planned: PlannedStudy) -> StudyDraft:
     return StudyDraft(planned.title, planned.question, planned.site, ZONE, tuple(factors), tuple(responses))
 
 
-def _tours(planned: PlannedStudy, rng: Random) -> Iterator[_Tour]:
+def tours_of(planned: PlannedStudy, rng: Random) -> Iterator[Tour]:
     """Run the tours of a study in random order, a set of all combinations after another."""
     order: list[dict[str, str]] = []
     for complete_set in range(planned.per_cell):
@@ -176,13 +176,13 @@ def _more(planned: PlannedStudy, cell: dict[str, str]) -> int:
     return max((more for pair, more in planned.more.items() if set(pair) <= set(cell.values())), default=0)
 
 
-def _tour(planned: PlannedStudy, levels: dict[str, str], place: int, rng: Random) -> _Tour:
+def _tour(planned: PlannedStudy, levels: dict[str, str], place: int, rng: Random) -> Tour:
     minutes = simulated_minutes(planned, levels, rng)
     reading = f"{minutes:.1f}" if planned.unit == "min" else f"{60 * minutes:.0f}"
     day, turn = divmod(place, TOURS_A_DAY)
     happened = _morning(planned, days=day) + timedelta(minutes=10 + 20 * turn + rng.randrange(15))
     wrong = "yes" if rng.random() < planned.truth.wrong_pick else "no"
-    return _Tour(levels, reading, wrong, happened)
+    return Tour(levels, reading, wrong, happened)
 
 
 def simulated_minutes(planned: PlannedStudy, levels: Levels, rng: Random) -> float:
@@ -191,7 +191,7 @@ def simulated_minutes(planned: PlannedStudy, levels: Levels, rng: Random) -> flo
 
 
 def _log(
-    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour], rng: Random
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[Tour], rng: Random
 ) -> None:
     """Log tours in the order they happened, a list at a time, as a phone sends them."""
     entries = [
@@ -209,7 +209,7 @@ def _log(
 
 
 def _make_up(
-    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour], rng: Random
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[Tour], rng: Random
 ) -> None:
     """Run again what was set aside, so that the planned size is reached."""
     again = [tours[number - 1].levels for number in planned.set_aside]
@@ -218,7 +218,7 @@ def _make_up(
 
 
 def _import(
-    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[_Tour]
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, tours: Sequence[Tour]
 ) -> None:
     """Take a study in from the file that the shift leads kept."""
     names = list(tours[0].levels)

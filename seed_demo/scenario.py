@@ -126,7 +126,7 @@ class PlannedStudy:
         Each argument is (factor, earlier level, later level). Averaged equally over all else.
         """
         (one, low, high), (other, before, after) = first, second
-        rest = [cell for cell in self.cells if cell[one] == low and cell[other] == before]
+        rest = [cell for cell in self.cells if cell[one] == self.cells[0][one] and cell[other] == self.cells[0][other]]
 
         def mean(level: str, beside: str) -> float:
             return sum(self.true_mean({**cell, one: level, other: beside}) for cell in rest) / len(rest)
