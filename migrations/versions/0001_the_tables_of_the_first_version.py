@@ -301,6 +301,7 @@ def upgrade() -> None:
         sa.Column("study_id", KEY, nullable=False),
         sa.Column("number", KEY, autoincrement=False, nullable=False),
         sa.Column("at", sa.DateTime(timezone=True), nullable=False),
+        sa.Column("headline", sa.Text(), nullable=False),
         sa.Column("content", sa.Text(), nullable=False),
         sa.Column("fingerprint", sa.String(length=64), nullable=False),
         sa.ForeignKeyConstraint(["study_id"], ["study.id"], name=op.f("fk_pinned_result_study_id")),

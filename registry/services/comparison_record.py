@@ -7,7 +7,7 @@ from typing import Any
 
 from registry.analysis.results import Estimate
 from registry.analysis.undefined import Undefined
-from registry.services.across_words import number
+from registry.services.across_words import contrast_name, number
 from registry.services.lasting_names import Names
 from registry.services.series_evidence import StudyHead
 from registry.synthesis.changes import WORDS, Change, Compared
@@ -58,6 +58,7 @@ def head_record(head: StudyHead) -> dict[str, Any]:
 def _change(change: Change, names: Names) -> dict[str, Any]:
     code = change.code
     return {
+        "name": contrast_name(change.corners, names),
         "factors": [names.factor(factor) for factor in change.corners],
         "levels": [[names.level(level) for level in pair] for pair in change.corners.values()],
         "first": _estimate(change.first),

@@ -134,7 +134,7 @@ def change_meaning(
         row = add_successor(session, level, name=new_name, definition=meaning)
         append_registry_event(
             session,
-            "level_meaning_changed",
+            "level_redefined",
             person_id=person.id,
             before=_pair(factor.name, level.name),
             after=_pair(factor.name, new_name),

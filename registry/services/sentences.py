@@ -56,6 +56,18 @@ def sentences_of(card: StudyCard, response: ResponseLine, result: Decomposition)
     yield from _findings(response, result)
 
 
+def headline_of(card: StudyCard, response: ResponseLine, result: Decomposition) -> str:
+    """Say in one sentence what a study found: its largest finding, or that there is none, and why."""
+    if may_judge(card):
+        return next(_findings(response, result), "It crossed one level alone, so there is nothing to compare.")
+    if card.status != "closed":
+        return f"It is {card.status}: nothing is judged yet."
+    if card.plan is None:
+        return "It explored without a plan, so nothing is judged."
+    how = "early" if card.close_reason == "early" else "after it was extended"
+    return f"It was closed {how}, so nothing is judged."
+
+
 def _size(card: StudyCard, response: ResponseLine, result: Decomposition) -> str:
     planned = f" of {card.plan.planned} planned" if card.plan else ""
     aside = f"; {card.set_aside} set aside" if card.set_aside else ""

@@ -12,6 +12,7 @@ from registry.services.people import Person
 from registry.services.text_check import checked_name, checked_text
 from registry.storage.engine import Database
 from registry.storage.history import append_registry_event
+from registry.storage.pinned import latest_headlines
 from registry.storage.studies import (
     TrialCount,
     factors_of_series,
@@ -30,7 +31,7 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class StudyLine:
-    """One study as a line of its series."""
+    """One study as a line of its series; ``headline`` is what a closed one found, in one sentence."""
 
     id: int
     title: str
@@ -44,6 +45,7 @@ class StudyLine:
     last_trial: datetime | None
     created_at: datetime
     closed_at: datetime | None
+    headline: str | None
 
 
 @dataclass(frozen=True)
@@ -124,7 +126,7 @@ def _role(code: str) -> Role:
 def _lines(session: Any, open_to: list[tuple[Series, Role]]) -> list[SeriesLine]:
     studies = studies_of(session, [series.id for series, _ in open_to])
     ids = [study.id for study in studies]
-    plans, counts = plans_of(session, ids), trial_counts(session, ids)
+    plans, counts, headlines = plans_of(session, ids), trial_counts(session, ids), latest_headlines(session, ids)
     return [
         SeriesLine(
             series.id,
@@ -132,7 +134,7 @@ def _lines(session: Any, open_to: list[tuple[Series, Role]]) -> list[SeriesLine]
             series.about,
             role,
             tuple(
-                _line(study, plans.get(study.id), counts.get(study.id, TrialCount()))
+                _line(study, plans.get(study.id), counts.get(study.id, TrialCount()), headlines.get(study.id))
                 for study in studies
                 if study.series_id == series.id
             ),
@@ -141,7 +143,7 @@ def _lines(session: Any, open_to: list[tuple[Series, Role]]) -> list[SeriesLine]
     ]
 
 
-def _line(study: Study, plan: Plan | None, count: TrialCount) -> StudyLine:
+def _line(study: Study, plan: Plan | None, count: TrialCount, headline: str | None) -> StudyLine:
     return StudyLine(
         id=study.id,
         title=study.title,
@@ -155,6 +157,7 @@ def _line(study: Study, plan: Plan | None, count: TrialCount) -> StudyLine:
         last_trial=count.last,
         created_at=study.created_at,
         closed_at=study.closed_at,
+        headline=headline,
     )
 
 

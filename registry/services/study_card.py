@@ -11,7 +11,7 @@ from registry.services.people import Person
 from registry.storage.engine import Database
 from registry.storage.frame import FrameFactor, StudyFrame, fetch_frame
 from registry.storage.studies import TrialCount, find_series, plans_of, readings_per_response, trial_counts
-from registry.storage.tables import Plan
+from registry.storage.tables import Plan, Study
 from registry.trials.units import unit as find_unit
 
 
@@ -104,8 +104,14 @@ def study_card(database: Database, person: Person, study_id: int) -> StudyCard:
 
 
 def open_study_card(session: Any, person: Person, study_id: int) -> StudyCard:
-    """Make the head of a study inside an open read."""
+    """Make the head of a study inside an open read, for whom may read it."""
     study, role = require_study(session, person, study_id, at_least="viewer")
+    return card_of(session, study, role)
+
+
+def card_of(session: Any, study: Study, role: Role) -> StudyCard:
+    """Make the head of a study that the caller may show."""
+    study_id = study.id
     series = find_series(session, study.series_id)
     frame = fetch_frame(session, study_id)
     count = trial_counts(session, [study_id]).get(study_id, TrialCount())

@@ -10,6 +10,7 @@ from datetime import datetime
 from registry.errors import AlreadyThere, Fault, InputRefused, NotNow
 from registry.services.access import require_study
 from registry.services.people import Person
+from registry.services.pinning import pin_result
 from registry.services.text_check import checked_margin, checked_text
 from registry.storage.engine import Database
 from registry.storage.frame import StudyFrame, fetch_frame
@@ -119,6 +120,7 @@ def close_study(database: Database, person: Person, study_id: int, *, reason: st
         unit.study.status, unit.study.close_reason, unit.study.closed_at = "closed", reason, now
         unit.study.close_note = words or None
         unit.record(Happening("study_closed", after=reason, words=words or None))
+        pin_result(unit, now=now)
 
 
 def _checked_closing(unit: StudyUnit, reason: str, note: str) -> str:

@@ -14,7 +14,7 @@ from registry.services.build_up import BuildUp, build_up
 from registry.services.decomposition_record import as_record
 from registry.services.figures import Figure, Interval, figure, interval
 from registry.services.people import Person
-from registry.services.sentences import may_judge, places_of, sentences_of, why_not_judged
+from registry.services.sentences import headline_of, may_judge, places_of, sentences_of, why_not_judged
 from registry.services.study_card import ResponseLine, StudyCard, open_study_card
 from registry.services.tallied import policy_of, tallied_study
 from registry.storage.engine import Database
@@ -98,6 +98,7 @@ class StudyReport:
     response: ResponseLine
     places: int
     sentences: tuple[str, ...]
+    headline: str
     judged: bool
     why_not_judged: str
     findings: Findings | None
@@ -118,21 +119,28 @@ def study_report(
     """
     with database.read() as session:
         card = open_study_card(session, person, study_id)
-        frame = fetch_frame(session, study_id)
-        chosen = _chosen(frame, response)
-        tallies = fetch_tallies(session, study_id, chosen.response_id)
+        return report_of(session, card, response=response, row=row, column=column)
+
+
+def report_of(
+    session: Any, card: StudyCard, *, response: str | None, row: str | None = None, column: str | None = None
+) -> StudyReport:
+    """Report inside an open read on a study that the caller may show."""
+    frame = fetch_frame(session, card.id)
+    chosen = _chosen(frame, response)
+    tallied = tallied_study(frame, chosen, fetch_tallies(session, card.id, chosen.response_id))
     line = next(line for line in card.responses if line.name == chosen.name)
     judged = may_judge(card)
-    tallied = tallied_study(frame, chosen, tallies)
     if not any(tally.n for tally in tallied.tallies.values()):
         said = (f"No reading of {chosen.name} counts yet.",)
-        return StudyReport(card, line, places_of(line), said, judged, why_not_judged(card), None)
+        return StudyReport(card, line, places_of(line), said, said[0], judged, why_not_judged(card), None)
     result = decompose(tallied, error=policy_of(card.spread, blocked=card.block is not None))
     return StudyReport(
         card=card,
         response=line,
         places=places_of(line),
         sentences=tuple(sentences_of(card, line, result)),
+        headline=headline_of(card, line, result),
         judged=judged,
         why_not_judged=why_not_judged(card),
         findings=_findings(card, line, result, row=row, column=column, judged=judged),
@@ -243,9 +251,11 @@ def report_record(report: StudyReport) -> dict[str, Any]:
         "block": asdict(card.block) if card.block else None,
         "held": [asdict(factor) for factor in card.held],
         "unit": report.response.unit,
+        "unit_name": report.response.unit_name,
         "margin": report.response.margin,
     }
     record["sentences"] = list(report.sentences)
+    record["headline"] = report.headline
     if report.findings:
         record["differences"] = [asdict(line) for line in report.findings.differences]
         record["changes"] = [asdict(line) for line in report.findings.changes]

@@ -11,6 +11,7 @@ from fractions import Fraction
 from registry.errors import Fault, InputRefused, NotFound, NotNow
 from registry.services.access import require_study
 from registry.services.people import Person
+from registry.services.pinning import pin_result
 from registry.services.trial_check import FARTHEST_READING, checked_reading, far_reading, shown_reading
 from registry.storage.engine import Database
 from registry.storage.frame import FrameResponse, StudyFrame, fetch_frame
@@ -85,6 +86,8 @@ def _on_bench(
         frame = fetch_frame(unit.session, study_id)
         bench = _Bench(unit, frame, trial, {reading.response_id: reading for reading in readings})
         yield bench, _checked_reason(reason)
+        if unit.study.status == "closed":
+            pin_result(unit, now=now)
 
 
 def _require_logged_study(unit: StudyUnit) -> None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from flask import Flask, Response
+from flask import Flask, Response, request
 
 from web import shell
 from web.assets import keep_static_files
@@ -34,6 +34,9 @@ ALWAYS = {
     "Cross-Origin-Opener-Policy": "same-origin",
     "Cross-Origin-Resource-Policy": "same-origin",
 }
+# Behind a reader link the address itself is the key: nobody it leads to, and no index, may learn it.
+FOR_READERS = {"Referrer-Policy": "no-referrer", "X-Robots-Tag": "noindex, nofollow, noarchive"}
+READERS = "/r/"
 TWO_YEARS = 63_072_000
 
 
@@ -44,6 +47,8 @@ def install(app: Flask) -> None:
 
 def _set_headers(response: Response) -> Response:
     response.headers.update(ALWAYS)
+    if request.path.startswith(READERS):
+        response.headers.update(FOR_READERS)
     if shell.settings().secure_cookies:
         response.headers["Strict-Transport-Security"] = f"max-age={TWO_YEARS}"
     keep_static_files(response)

@@ -32,13 +32,14 @@ class Decision(Base):
 
 
 class PinnedResult(Base):
-    """The result as it stood when a study closed."""
+    """The result as it stood when a study closed, and after each change of its trials since."""
 
     __tablename__ = "pinned_result"
 
     study_id: Mapped[int] = mapped_column(ForeignKey("study.id"), primary_key=True)
     number: Mapped[int] = mapped_column(primary_key=True, autoincrement=False)
     at: Mapped[datetime]
+    headline: Mapped[Long]
     content: Mapped[Long]
     fingerprint: Mapped[Hash]
 

@@ -1,0 +1,5 @@
+"""Pages for readers without an account."""
+
+from web.reader.views import blueprint
+
+__all__ = ["blueprint"]
