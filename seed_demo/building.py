@@ -24,7 +24,7 @@ from registry.services.trial_import import read_upload, run_import
 from registry.services.trial_log import MOST_AT_ONCE, TrialEntry, log_trials
 from seed_demo.scenario import MARGIN, RENAMED, SHIFT, STUDIES, Levels, PlannedStudy
 
-SEED = 20241014
+SEED = 20241016
 ZONE = "Europe/Copenhagen"
 TOURS_A_DAY = 24
 STEP = {"min": "0.1", "s": "1"}

@@ -12,7 +12,7 @@ from web.numbers import minus
 
 Shape = Literal["ring", "dot", "diamond", "bar"]
 LANE = 20
-_MOST_TICKS = 7
+_MOST_TICKS = 5
 
 
 @dataclass(frozen=True)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
@@ -65,7 +66,7 @@ def series_evidence(
     """Gather the closed studies that read a response, in a number of queries that does not grow with them.
 
     Effects are told in the unit, and judged by the margin, of study ``told_by``, or of the
-    latest study with a margin. Nothing is returned while no study has closed with a
+    latest study in the usual unit. Nothing is returned while no study has closed with a
     reading of any measured response. Raises NotFound for a response they do not have.
     """
     everything = studies_of(session, [series_id])
@@ -107,11 +108,18 @@ def _choice(measured: Sequence[str]) -> str:
 
 
 def _teller(order: Sequence[int], used: dict[int, FrameResponse], told_by: int | None) -> FrameResponse:
-    """Pick the study whose unit and margin hold: the one asked for, else the latest with a margin, else the latest."""
+    """Pick the study whose unit and margin hold.
+
+    The one asked for; else, of those in the unit most of them used, the latest that
+    stated a margin, or simply the latest.
+    """
     if told_by in used:
         return used[told_by]
     latest_first = [used[study_id] for study_id in reversed(order)]
-    return next((response for response in latest_first if response.margin), latest_first[0])
+    often = Counter(response.unit for response in latest_first).most_common(1)[0][0]
+    usual = [response for response in latest_first if response.unit == often]
+    with_margin = [response for response in (*usual, *latest_first) if response.margin]
+    return (with_margin or usual)[0]
 
 
 def _standing(study: Study, plan: Plan | None) -> Standing:

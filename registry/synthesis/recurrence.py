@@ -116,23 +116,25 @@ def board(studies: Sequence[Contribution], *, margin: float, fdr: float = 0.05) 
 
 def every_square(studies: Sequence[Contribution]) -> Iterator[dict[Identity, tuple[Identity, Identity]]]:
     """List every pair of levels of every pair of factors that some study crosses, in order of first appearance."""
-    factors = [
-        factor
-        for factor in factors_in_order(studies)
-        if any(factor == part.factor for study in studies for part in study.crossed)
-    ]
+    crossed: dict[Identity, set[Identity]] = {}
+    for study in studies:
+        for part in study.crossed:
+            crossed.setdefault(part.factor, set()).update(part.levels)
+    # A level that one study held and another crosses takes the place of its first appearance.
     levels = {
-        factor: list(
-            dict.fromkeys(
-                level for study in studies for part in study.crossed if part.factor == factor for level in part.levels
-            )
-        )
-        for factor in factors
+        factor: [level for level in _in_order(studies, factor) if level in crossed[factor]]
+        for factor in factors_in_order(studies)
+        if factor in crossed
     }
-    for one, other in combinations(factors, 2):
+    for one, other in combinations(levels, 2):
         for pair in combinations(levels[one], 2):
             for beside in combinations(levels[other], 2):
                 yield {one: pair, other: beside}
+
+
+def _in_order(studies: Sequence[Contribution], factor: Identity) -> list[Identity]:
+    parts = (part for study in studies for part in study.parts if part.factor == factor)
+    return list(dict.fromkeys(level for part in parts for level in part.levels))
 
 
 def _shown(

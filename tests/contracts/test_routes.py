@@ -19,9 +19,21 @@ import pytest
 from flask import Flask
 
 from registry.services.access import ROLES
+from registry.services.levels import series_levels
 from registry.services.opening import Database, open_registry
+from registry.services.reader_links import LinkDraft, make_link
 from registry.services.trial_import import read_upload
-from tests.support.studies import MINUTES, NOW, WRONG_PICK, a_study, another_study
+from tests.support.studies import (
+    MINUTES,
+    NOW,
+    START,
+    WALK,
+    WRONG_PICK,
+    a_study,
+    another_study,
+    close_a_study,
+    even_readings,
+)
 from tests.support.visitors import Visitor, a_visitor, an_app, somebody, somebody_in
 
 VISITORS = ("signed_out", "stranger", "viewer", "logger", "analyst", "keeper", "registry_keeper")
@@ -68,8 +80,24 @@ imports.upload          GET  /studies/{running}/import           303 404      40
 imports.uploaded        POST /studies/{running}/import           401 404      403    403    303     303    303
 imports.look            GET  /studies/{running}/import/{job}     303 404      403    403    200     200    200
 imports.decided         POST /studies/{running}/import/{job}     401 404      403    403    303     303    303
+across.compare          GET  /studies/{closed}/compare           303 404      200    200    200     200    200
+across.compare_record   GET  /studies/{closed}/compare/record.json 303 404    200    200    200     200    200
+across.recurrence       GET  /series/{series}/recurrence         303 404      200    200    200     200    200
+across.recurrence_record GET /series/{series}/recurrence/record.json 303 404  200    200    200     200    200
+levels.every            GET  /series/{series}/levels             303 404      200    200    200     200    200
+levels.rename           GET  /series/{series}/levels/{level}/name 303 404     403    403    200     200    200
+levels.renamed          POST /series/{series}/levels/{level}/name 401 404     403    403    303     303    303
+levels.meaning          GET  /series/{series}/levels/{level}/meaning 303 404  403    403    200     200    200
+levels.meaning_changed  POST /series/{series}/levels/{level}/meaning 401 404  403    403    303     303    303
+links.every             GET  /series/{series}/links              303 404      403    403    200     200    200
+links.new               GET  /series/{series}/links/new?scope=study&study={closed} 303 404 403 403 200 200 200
+links.new_try           POST /series/{series}/links/new          401 404      403    403    201     201    201
+links.revoked           POST /series/{series}/links/{link}/revoke 401 404     403    403    303     303    303
+reader.page             GET  /r/{token}                          200 200      200    200    200     200    200
+reader.record           GET  /r/{token}/record.json              200 200      200    200    200     200    200
 """
 
+TOKEN = "a-token-that-nobody-guesses"
 FILE = b"walk,start,minutes\nreturn,back,7.1\n"
 
 FORMS: Mapping[str, Mapping[str, str | bytes]] = {
@@ -102,6 +130,9 @@ FORMS: Mapping[str, Mapping[str, str | bytes]] = {
     },
     "imports.uploaded": {"file": FILE},
     "imports.decided": {"drop": "yes"},
+    "levels.renamed": {"name": "there and back", "reason": "that is what the crews say"},
+    "levels.meaning_changed": {"name": "return by the new lift", "definition": "back along the lift"},
+    "links.new_try": {"scope": "study", "study": "1", "kind": "live", "days": "30"},
 }
 
 
@@ -123,6 +154,10 @@ class World:
     running: int
     planned: int
     job: int
+    closed: int
+    level: int
+    link: int
+    token: str
 
 
 LINES = tuple(
@@ -141,7 +176,14 @@ def _fill(database: Database) -> World:
     somebody(database, ADDRESS_OF["stranger"])
     for role in ROLES:
         somebody_in(database, place.keeper, place.series_id, role=role, address=ADDRESS_OF[role])
-    return World(place.series_id, place.study_id, planned, job)
+    readings = even_readings((WALK.levels, START.levels), lambda _: 20.0)
+    closed = [close_a_study(place, title=title, readings=readings) for title in ("Winter", "Spring")]
+    level = series_levels(database, place.keeper, place.series_id).factors[0].levels[0].id
+    draft = LinkDraft("study", closed[0], None, None, "fixed", "")
+    link = make_link(
+        database, place.keeper, place.series_id, draft, token=TOKEN, draw=lambda _scope, _record: {}, now=NOW
+    )
+    return World(place.series_id, place.study_id, planned, job, closed[1], level, link, TOKEN)
 
 
 @pytest.fixture(scope="module")
@@ -210,7 +252,8 @@ def test_the_table_holds_every_route_and_method(app: Flask) -> None:
 def test_every_address_of_the_table_leads_to_its_endpoint(app: Flask, filled: tuple[Path, World]) -> None:
     adapter = app.url_map.bind("localhost")
     for line in LINES:
-        found, _ = adapter.match(line.address.format(**asdict(filled[1])), method=line.method)
+        path = line.address.format(**asdict(filled[1])).partition("?")[0]
+        found, _ = adapter.match(path, method=line.method)
         assert found == line.endpoint
 
 

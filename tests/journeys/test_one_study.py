@@ -11,10 +11,13 @@ from playwright.sync_api import Page, expect
 pytestmark = pytest.mark.journey
 
 PAGES = (
-    "/", "/series/new", "/series/1/studies/new", "/studies/1", "/studies/2", "/studies/3", "/studies/4", "/studies/5",
-    "/studies/6", "/studies/6/plan", "/studies/1/plan", "/studies/5/end", "/studies/5/step", "/studies/1/history",
-    "/studies/1/trials", "/studies/1/trials?which=set_aside", "/studies/1/trials/17", "/studies/5/log",
-    "/studies/5/import", "/studies/1?rows=start&columns=walk", "/studies/1?response=wrong+pick",
+    "/", "/series/new", "/series/1/studies/new", "/studies/1", "/studies/2", "/studies/3", "/studies/5", "/studies/7",
+    "/studies/8", "/studies/9", "/studies/9/plan", "/studies/1/plan", "/studies/8/end", "/studies/8/step",
+    "/studies/1/history", "/studies/1/trials", "/studies/1/trials?which=set_aside", "/studies/1/trials/17",
+    "/studies/8/log", "/studies/8/import", "/studies/1?rows=start&columns=walk", "/studies/4?response=wrong+pick",
+    "/studies/6/compare", "/studies/6/compare?with=3", "/series/1/recurrence", "/series/1/levels",
+    "/series/1/levels/3/name", "/series/1/levels/3/meaning", "/series/1/links",
+    "/series/1/links/new?scope=study&study=6",
 )  # fmt: skip
 
 
@@ -23,7 +26,7 @@ def test_a_study_from_its_start_to_its_decomposition(page: Page, tmp_path: Path)
     page.fill("[name=title]", "Walk by start")
     page.fill("[name=site]", "Main hall")
     page.select_option("[name=time_zone]", "Europe/Copenhagen")
-    fill_factor(page, 0, "walk", "serpentine\nreturn")
+    fill_factor(page, 0, "walk", "serpentine\nlargest gap")
     fill_factor(page, 1, "start", "front\nback")
     page.evaluate(CLEAR_OTHER_ROWS)
     fill_name(page, "[name=responses-0-name]", "minutes")
@@ -36,7 +39,7 @@ def test_a_study_from_its_start_to_its_decomposition(page: Page, tmp_path: Path)
     expect(page.get_by_role("status")).to_contain_text("The study runs")
 
     page.get_by_role("link", name="Log a trial").click()
-    page.get_by_text("return", exact=True).first.click()
+    page.get_by_text("largest gap", exact=True).first.click()
     page.get_by_text("back", exact=True).first.click()
     page.fill("[name=readings-minutes]", "7,1")
     page.get_by_role("button", name="Log this trial").click()
@@ -44,11 +47,11 @@ def test_a_study_from_its_start_to_its_decomposition(page: Page, tmp_path: Path)
     expect(page.locator("[name=readings-minutes]")).to_have_value("7,1")
     page.fill("[name=readings-minutes]", "7.1")
     page.get_by_role("button", name="Log this trial").click()
-    expect(page.get_by_role("status")).to_contain_text("Trial 1 is logged: return, back: minutes 7.1.")
+    expect(page.get_by_role("status")).to_contain_text("Trial 1 is logged: largest gap, back: minutes 7.1.")
 
     page.goto(page.url.partition("/log")[0] + "/import")
     faulty = tmp_path / "faulty.csv"
-    faulty.write_text("walk,start,minutes\nzigzag,back,7.1\nreturn,front,7.1x\n")
+    faulty.write_text("walk,start,minutes\nzigzag,back,7.1\nlargest gap,front,7.1x\n")
     give(page, faulty)
     expect(page.get_by_role("alert")).to_contain_text("line 2, column walk: 'zigzag' given")
     expect(page.get_by_role("alert")).to_contain_text("line 3, column minutes: '7.1x' given")
@@ -59,7 +62,7 @@ def test_a_study_from_its_start_to_its_decomposition(page: Page, tmp_path: Path)
     clean = tmp_path / "clean.csv"
     rows = [
         f"{walk},{start},{20 + turn / 10:.1f}"
-        for walk in ("serpentine", "return")
+        for walk in ("serpentine", "largest gap")
         for start in ("front", "back")
         for turn in range(3)
     ]

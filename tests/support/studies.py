@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime, timedelta
+from itertools import product
 from uuid import UUID, uuid5
 
 from registry.services.opening import Database
 from registry.services.people import Person, add_person
 from registry.services.series_pages import SeriesDraft, new_series
 from registry.services.settings import PasswordCost
-from registry.services.study_plan import start_study
+from registry.services.study_plan import PlanDraft, close_study, lock_plan, start_study
 from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft, new_study
 from registry.services.trial_log import TrialEntry, log_trials
 
@@ -97,3 +98,59 @@ def another_study(
     if started:
         start_study(database, keeper, study_id, now=NOW + timedelta(minutes=1))
     return study_id
+
+
+def close_a_study(
+    place: Place,
+    *,
+    title: str,
+    factors: Sequence[FactorDraft] = (WALK, START),
+    responses: Sequence[ResponseDraft] = (MINUTES,),
+    readings: Mapping[tuple[str, ...], Sequence[str]],
+    starts: datetime = NOW,
+    site: str = "Osierholm",
+    reason: str = "size_reached",
+    planned: int | None = None,
+) -> int:
+    """Plan, start, log and close a study; ``readings`` are of the first response, by the levels a trial states.
+
+    The plan promises as many trials a combination as the first one has, or none when it
+    is 0: then the study explores and is closed early.
+    """
+    draft = StudyDraft(title, "Which walk is fastest?", site, "Europe/Copenhagen", tuple(factors), tuple(responses))
+    study_id = new_study(place.database, place.keeper, place.series_id, draft, now=starts)
+    per_cell = planned if planned is not None else len(next(iter(readings.values())))
+    if per_cell:
+        lock_plan(place.database, place.keeper, study_id, PlanDraft(str(per_cell)), now=starts)
+    start_study(place.database, place.keeper, study_id, now=starts)
+    stated = [factor.name for factor in factors if factor.role != "held"]
+    entries = [
+        TrialEntry(
+            key=str(uuid5(_KEYS, f"{title}/{levels}/{turn}")),
+            levels=dict(zip(stated, levels, strict=True)),
+            readings={responses[0].name: text},
+            happened_at=starts,
+        )
+        for levels, texts in readings.items()
+        for turn, text in enumerate(texts)
+    ]
+    for first in range(0, len(entries), 100):
+        log_trials(place.database, place.keeper, study_id, entries[first : first + 100], now=starts)
+    note = "" if reason == "size_reached" else "as the test wants"
+    close_study(place.database, place.keeper, study_id, reason=reason, note=note, now=starts + timedelta(days=1))
+    return study_id
+
+
+def even_readings(
+    crossed: Sequence[Sequence[str]],
+    mean: Callable[[tuple[str, ...]], float],
+    *,
+    per_cell: int = 6,
+    noise: float = 0.4,
+    places: int = 1,
+) -> dict[tuple[str, ...], list[str]]:
+    """Give readings of every combination that lie evenly about its mean, so that every estimate is known."""
+    return {
+        levels: [f"{mean(levels) + (noise if turn % 2 else -noise):.{places}f}" for turn in range(per_cell)]
+        for levels in product(*crossed)
+    }

@@ -66,7 +66,7 @@ def _step_trace(cells: list[BuiltMean], at: int, grand: float, *, last: bool, pl
         "marker": {
             "color": [ABOVE if offset > 0 else BELOW for offset in offsets],
             "line": {"color": INK, "width": 0.5},
-            "pattern": {"shape": PATTERNS[at], "fgcolor": GROUND, "size": 6, "solidity": 0.35},
+            "pattern": {"shape": PATTERNS[at], "fillmode": "overlay", "fgcolor": GROUND, "size": 6, "solidity": 0.35},
         },
         "hovertemplate": f"%{{y:+.{places}f}}<extra>%{{fullData.name}}</extra>",
     }
