@@ -61,6 +61,7 @@ def create_app(database: Database, settings: Settings, *, clock: Callable[[], da
     """Put the application together on an open database; ``clock`` says what time it is."""
     app = Flask("web", root_path=str(Path(__file__).parent))
     app.secret_key = settings.secret
+    app.json.sort_keys = False  # type: ignore[attr-defined] # Factors and levels keep their order in a record.
     app.jinja_env.undefined = StrictUndefined
     app.jinja_env.trim_blocks = app.jinja_env.lstrip_blocks = True
     app.extensions["weftbook"] = Shell(database, settings, clock)

@@ -15,5 +15,5 @@ def pin_result(unit: StudyUnit, *, now: datetime) -> None:
     """Keep the record of a closed study's first response as it stands, in the unit of work that made it so."""
     unit.session.flush()  # What was just changed must be in what is read back.
     report = report_of(unit.session, card_of(unit.session, unit.study, "viewer"), response=None)
-    content = json.dumps(report_record(report), ensure_ascii=False, allow_nan=False, sort_keys=True)
+    content = json.dumps(report_record(report), ensure_ascii=False, allow_nan=False)
     pin(unit.session, unit.study.id, headline=report.headline, content=content, now=now)

@@ -202,7 +202,7 @@ def _comparison(session: Any, study: Study, subject: Mapping[str, Any]) -> dict[
 
 
 def _as_text(content: Mapping[str, Any]) -> str:
-    return json.dumps(content, ensure_ascii=False, allow_nan=False, sort_keys=True)
+    return json.dumps(content, ensure_ascii=False, allow_nan=False)
 
 
 def series_links(database: Database, person: Person, series_id: int, *, now: datetime) -> SeriesLinks:

@@ -63,6 +63,15 @@ def test_a_link_opens_without_an_account_and_explains_itself(app: Flask, place: 
     assert "Sign out" not in words
 
 
+def test_every_combination_stands_under_its_own_factors(app: Flask, place: Place) -> None:
+    # Start sorts before walk by its letters, and after it in the study.
+    text = a_visitor(app).get(link(app, place)).text
+
+    heads = re.findall(r'<th scope="col">(\w+)</th>', text.partition("combinations-caption")[2])
+    assert heads[:2] == ["walk", "start"]
+    assert "<td>serpentine</td><td>front</td>" in text
+
+
 def test_a_comparison_opens_with_both_studies_and_the_change(app: Flask, place: Place) -> None:
     path = link(app, place, scope="comparison", study="3", beside="2", kind="live")
 
