@@ -24,7 +24,7 @@ from web.study.pages import EndPage, EventsPage, PlanPage, ReportPage, StepPage
 RECENT = 5
 SPREADS = choices(
     (
-        ("", "By the house rule: its own from 5 trials a combination and without a block, else shared"),
+        ("", "By the house rule"),
         ("shared", "Shared by all combinations"),
         ("own", "Each combination its own"),
     )
