@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import UTC, datetime, time, timedelta
 from io import StringIO
 from random import Random
@@ -15,6 +15,7 @@ from registry.services.import_check import ColumnChoice
 from registry.services.levels import rename_level, series_levels
 from registry.services.opening import Database
 from registry.services.people import Person, add_person, grant
+from registry.services.run_order import run_list, skip_run
 from registry.services.series_pages import SeriesDraft, new_series
 from registry.services.settings import PasswordCost
 from registry.services.study_plan import PlanDraft, close_study, lock_plan, start_study
@@ -48,6 +49,7 @@ class Tour:
     reading: str
     wrong_pick: str
     happened_at: datetime
+    run: int | None = None
 
 
 def build_demo(
@@ -102,13 +104,16 @@ def _build_study(
     study_id = new_study(database, people.analyst, series_id, _draft(planned), now=made_at)
     if planned.status == "planned":
         return
-    lock_plan(database, people.analyst, study_id, PlanDraft(str(planned.per_cell)), now=made_at)
+    draft = PlanDraft(str(planned.per_cell), spread=planned.spread)
+    # What the shift leads kept in a file was run as it came; every other study has its run order.
+    seed = None if planned.imported else rng.randrange(2**31)
+    lock_plan(database, people.analyst, study_id, draft, now=made_at, seed=seed)
     start_study(database, people.analyst, study_id, now=_morning(planned))
-    tours = list(tours_of(planned, rng))
     if planned.imported:
+        tours = list(tours_of(planned, rng))
         _import(database, people, study_id, planned, tours)
     else:
-        _log(database, people, study_id, planned, tours, rng)
+        tours = _run_in_order(database, people, study_id, planned, rng)
     last = tours[-1].happened_at
     for number, reason in planned.set_aside.items():
         set_aside_trial(database, people.analyst, study_id, number, reason=reason, now=last)
@@ -123,6 +128,26 @@ def _build_study(
             note=planned.close_note,
             now=last + timedelta(days=1),
         )
+
+
+def _run_in_order(
+    database: Database, people: DemoPeople, study_id: int, planned: PlannedStudy, rng: Random
+) -> list[Tour]:
+    """Work through the run order as far as the study got; skip what could not be run, saying why."""
+    runs = run_list(database, people.logger, study_id)
+    runs = runs[: round(len(runs) * planned.share)]
+    tours: list[Tour] = []
+    for run in runs:
+        reason = planned.skipped_runs.get(run.position, planned.why_never if _never_run(planned, run.levels) else "")
+        if reason:
+            day = _morning(planned, days=len(tours) // TOURS_A_DAY)
+            skip_run(database, people.logger, study_id, run.position, reason=reason, now=day)
+            continue
+        tours.append(replace(_tour(planned, dict(run.levels), len(tours), rng), run=run.position))
+    beyond = [cell for cell in planned.cells for _ in range(_more(planned, cell))]
+    tours += [_tour(planned, cell, len(tours) + place, rng) for place, cell in enumerate(beyond)]
+    _log(database, people, study_id, planned, tours, rng)
+    return tours
 
 
 def _rename(database: Database, people: DemoPeople, series_id: int, *, now: datetime) -> None:
@@ -167,7 +192,7 @@ def tours_of(planned: PlannedStudy, rng: Random) -> Iterator[Tour]:
         yield _tour(planned, levels, place, rng)
 
 
-def _never_run(planned: PlannedStudy, cell: dict[str, str]) -> bool:
+def _never_run(planned: PlannedStudy, cell: Levels) -> bool:
     return any(all(cell[name] == level for name, level in levels.items()) for levels in planned.never_run)
 
 
@@ -200,6 +225,7 @@ def _log(
             levels=tour.levels,
             readings={"tour time": tour.reading} | ({"wrong pick": tour.wrong_pick} if planned.guard else {}),
             happened_at=tour.happened_at,
+            run=tour.run,
         )
         for tour in tours
     ]

@@ -100,7 +100,9 @@ class PlannedStudy:
     status: str = "closed"
     close_reason: str = "size_reached"
     close_note: str = ""
+    spread: str = ""
     never_run: tuple[Levels, ...] = ()
+    why_never: str = ""
     skipped_runs: Mapping[int, str] = field(default_factory=dict)
     more: Mapping[Pair, int] = field(default_factory=dict)
     share: float = 1.0
@@ -207,6 +209,7 @@ STUDIES: tuple[PlannedStudy, ...] = (
         held={"batch": "8"},
         per_cell=30,
         unit="s",
+        spread="shared",
         close_reason="early",
         close_note="the annex was needed for the stock count",
         share=0.6,
@@ -235,6 +238,7 @@ STUDIES: tuple[PlannedStudy, ...] = (
         unit="s",
         guard=True,
         never_run=({"walk": "serpentine", "batch": "12"},),
+        why_never="no trolley in the annex holds 12 orders on a serpentine",
         close_reason="extended",
         close_note="ran on in the hope of a trolley for serpentine tours of 12; it never came",
     ),

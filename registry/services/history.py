@@ -71,7 +71,9 @@ def _sentence(row: EventRow) -> str:
             content = json.loads(row.after or "{}")
             levels = ", ".join(str(level) for level in content.get("levels", {}).values())
             readings = ", ".join(f"{name} {text}" for name, text in content.get("readings", {}).items())
-            return f"{trial} logged: {levels}: {readings}"
+            run = f" (run {content['run']})" if "run" in content else ""
+            as_run = ", ".join(str(level) for level in content.get("as_run", {}).values())
+            return f"{trial} logged{run}: {levels}: {readings}" + (f"; actually run: {as_run}" if as_run else "")
         case "trials_imported":
             content = json.loads(row.after or "{}")
             return f"Trials {content.get('first')} to {content.get('last')} imported"
@@ -82,6 +84,11 @@ def _sentence(row: EventRow) -> str:
         case "plan_locked":
             plan = json.loads(row.after or "{}")
             return f"Plan locked: {plan.get('per_cell')} trials a combination, {plan.get('planned')} in all"
+        case "run_order_drawn":
+            order = json.loads(row.after or "{}")
+            return f"Run order of {order.get('runs')} runs drawn from seed {order.get('seed')}"
+        case "run_skipped":
+            return f"Run {row.after} skipped"
         case "level_renamed":
             before, after = json.loads(row.before or "{}"), json.loads(row.after or "{}")
             return f"{before.get('factor')}: {before.get('level')} is called {after.get('level')} from now on"

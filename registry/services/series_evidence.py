@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime
 from typing import TYPE_CHECKING, Any, cast
 
@@ -13,6 +13,7 @@ from registry.services.lasting_names import LevelName, Names
 from registry.services.tallied import policy_of, tallied_study
 from registry.storage.frame import FrameFactor, FrameResponse, StudyFrame, fetch_frames
 from registry.storage.levels import aliases_of
+from registry.storage.runs import trials_out_of_order
 from registry.storage.studies import factors_of_series, plans_of, studies_of
 from registry.storage.tallies import fetch_tallies_of
 from registry.synthesis.contributions import Contribution, FactorPart, PartRole, Standing
@@ -87,9 +88,15 @@ def series_evidence(
         return None
     teller = _teller([study.id for study in having], used, told_by)
     plans = plans_of(session, [study.id for study in having])
+    stray = trials_out_of_order(session, [study.id for study in having])
     heads = tuple(_head(study, used[study.id], plans.get(study.id)) for study in having)
     contributions = tuple(
-        _contribution(study, frames[study.id], used[study.id], tallies[study.id], plans.get(study.id), unit=teller.unit)
+        replace(
+            _contribution(
+                study, frames[study.id], used[study.id], tallies[study.id], plans.get(study.id), unit=teller.unit
+            ),
+            in_order=study.id not in stray,
+        )
         for study in having
     )
     waiting = sum(study.status == "running" for study in everything)

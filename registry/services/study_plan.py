@@ -11,6 +11,7 @@ from registry.errors import AlreadyThere, Fault, InputRefused, NotNow
 from registry.services.access import require_study
 from registry.services.people import Person
 from registry.services.pinning import pin_result
+from registry.services.run_order import draw_order
 from registry.services.text_check import checked_margin, checked_text
 from registry.storage.engine import Database
 from registry.storage.frame import StudyFrame, fetch_frame
@@ -39,8 +40,13 @@ class PlanDraft:
     margins: Mapping[str, str] = field(default_factory=dict)
 
 
-def lock_plan(database: Database, person: Person, study_id: int, draft: PlanDraft, *, now: datetime) -> None:
-    """Promise the size, the margins and the spread policy before the first trial."""
+def lock_plan(
+    database: Database, person: Person, study_id: int, draft: PlanDraft, *, now: datetime, seed: int | None = None
+) -> None:
+    """Promise the size, the margins and the spread policy before the first trial.
+
+    A ``seed`` draws the run order; without one trials are logged as they come.
+    """
     with write_study(database, study_id, person_id=person.id, now=now) as unit:
         require_study(unit.session, person, unit.study, at_least="analyst")
         if plans_of(unit.session, [study_id]):
@@ -65,6 +71,8 @@ def lock_plan(database: Database, person: Person, study_id: int, draft: PlanDraf
         )  # fmt: skip
         after = {"per_cell": per_cell, "planned": planned, "spread": spread, "looks": draft.looks, "margins": margins}
         unit.record(Happening("plan_locked", after=json.dumps(after, ensure_ascii=False)))
+        if seed is not None:
+            draw_order(unit, frame, per_cell=per_cell, seed=seed)
 
 
 def _checked_plan(frame: StudyFrame, draft: PlanDraft) -> tuple[int, dict[str, str | None]]:

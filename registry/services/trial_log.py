@@ -6,7 +6,7 @@ import hashlib
 import json
 from collections import defaultdict
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import UTC, datetime
 from uuid import UUID
 
@@ -17,6 +17,7 @@ from registry.services.trial_check import checked_reading, far_reading, find_cel
 from registry.storage.engine import Database
 from registry.storage.frame import StudyFrame, fetch_frame
 from registry.storage.history import Happening
+from registry.storage.runs import find_run
 from registry.storage.studies import set_anchor
 from registry.storage.tallies import TallyKey, change_tallies
 from registry.storage.trials import NewTrial, add_note, add_trials, last_number, trials_by_key
@@ -29,7 +30,11 @@ LONGEST_NOTE = 2000
 
 @dataclass(frozen=True)
 class TrialEntry:
-    """One trial as somebody sends it; ``key`` is a UUID made by the sender, so that sending twice logs once."""
+    """One trial as somebody sends it; ``key`` is a UUID made by the sender, so that sending twice logs once.
+
+    ``levels`` are those actually run. A trial that belongs to a ``run`` of the run order
+    is counted at the levels that run assigned; where they differ both are kept.
+    """
 
     key: str
     levels: Mapping[str, str]
@@ -37,6 +42,7 @@ class TrialEntry:
     happened_at: datetime | None
     phone_clock: datetime | None = None
     note: str = ""
+    run: int | None = None
 
 
 @dataclass(frozen=True)
@@ -67,6 +73,7 @@ def log_trials(
             _require_running(unit)
             start = last_number(unit.session, study_id) + 1
             trials = _checked(frame, fresh, start=start, now=now, alone=len(entries) == 1)
+            trials = _assigned(unit, fresh, trials, alone=len(entries) == 1)
             write_trials(unit, frame, trials, person_id=person.id, now=now)
             for trial, entry in zip(trials, fresh, strict=True):
                 _record(unit, frame, trial, entry)
@@ -124,6 +131,7 @@ def _content_hash(entry: TrialEntry) -> str:
         sorted((name, text.strip()) for name, text in entry.readings.items() if text.strip()),
         entry.happened_at.astimezone(UTC).isoformat() if entry.happened_at and entry.happened_at.tzinfo else None,
         entry.note.strip(),
+        *([entry.run] if entry.run is not None else []),
     ]
     return hashlib.sha256(json.dumps(content, ensure_ascii=True).encode()).hexdigest()
 
@@ -164,6 +172,30 @@ def _checked(
     if faults:
         raise InputRefused(faults)
     return trials
+
+
+def _assigned(
+    unit: StudyUnit, entries: Sequence[TrialEntry], trials: Sequence[NewTrial], *, alone: bool
+) -> list[NewTrial]:
+    """Count each trial of a run where the run put it, and mark the run as done."""
+    assigned: list[NewTrial] = []
+    faults: list[Fault] = []
+    for place, (entry, trial) in enumerate(zip(entries, trials, strict=True), start=1):
+        if entry.run is None:
+            assigned.append(trial)
+            continue
+        run = find_run(unit.session, unit.study.id, entry.run)
+        if run is None or run.state != "waiting":
+            given = "there is no such run" if run is None else f"it is {run.state} already"
+            where = placed("" if alone else f"trial {place}", f"run {entry.run}")
+            faults.append(Fault(where, given, "take the next run that waits, or log without one", "run"))
+            continue
+        run.state = "done"
+        actual = trial.cell if trial.cell != run.cell else None
+        assigned.append(replace(trial, cell=run.cell, actual_cell=actual, run_position=run.position))
+    if faults:
+        raise InputRefused(faults)
+    return assigned
 
 
 def _readings(
@@ -251,7 +283,12 @@ def _record(unit: StudyUnit, frame: StudyFrame, trial: NewTrial, entry: TrialEnt
         frame.response_by_id(response_id).name: shown_reading(frame.response_by_id(response_id), steps)
         for response_id, steps in trial.readings
     }
-    after = json.dumps({"levels": frame.levels_of(trial.cell), "readings": readings}, ensure_ascii=False)
+    told: dict[str, object] = {"levels": frame.levels_of(trial.cell), "readings": readings}
+    if trial.run_position is not None:
+        told["run"] = trial.run_position
+    if trial.actual_cell is not None:
+        told["as_run"] = frame.levels_of(trial.actual_cell)
+    after = json.dumps(told, ensure_ascii=False)
     note = entry.note.strip()
     text = add_note(unit.session, unit.study.id, trial.number, note) if note else None
     unit.record(Happening("trial_logged", trial=trial.number, after=after, text=text))

@@ -10,6 +10,7 @@ from typing import Literal
 from registry.errors import Fault, NotFound
 from registry.services.history import EventShown, events_of_trial
 from registry.services.people import Person
+from registry.services.run_order import OrderState, order_state
 from registry.services.study_card import StudyCard, open_study_card
 from registry.services.trial_check import shown_reading
 from registry.storage.engine import Database
@@ -40,7 +41,7 @@ class ReadingShown:
 
 @dataclass(frozen=True)
 class TrialShown:
-    """One trial as people read it; ``levels`` holds the block's level too."""
+    """One trial as people read it; ``levels`` hold the block's too, ``as_run`` what was run where it differs."""
 
     number: int
     levels: Mapping[str, str]
@@ -50,6 +51,8 @@ class TrialShown:
     person: str
     kept: bool
     note: str
+    run: int | None
+    as_run: Mapping[str, str] | None
 
 
 @dataclass(frozen=True)
@@ -88,6 +91,7 @@ class LogSheet:
     card: StudyCard
     cells: tuple[CellCount, ...]
     recent: tuple[TrialShown, ...]
+    order: OrderState | None
 
 
 def trial_list(
@@ -134,6 +138,8 @@ def _shown(frame: StudyFrame, trial: Trial, name: str, readings: Sequence[Readin
         person=name,
         kept=trial.kept,
         note=note,
+        run=trial.run_position,
+        as_run=frame.levels_of(trial.actual_cell) if trial.actual_cell is not None else None,
     )
 
 
@@ -154,8 +160,11 @@ def trial_detail(database: Database, person: Person, study_id: int, number: int)
         return TrialDetail(card, shown, events_of_trial(session, study_id, number))
 
 
-def log_sheet(database: Database, person: Person, study_id: int) -> LogSheet:
-    """Show what to log on: every combination with its count, and the last few trials."""
+def log_sheet(database: Database, person: Person, study_id: int, *, block: str | None = None) -> LogSheet:
+    """Show what to log on: the next run, every combination with its count, and the last few trials.
+
+    ``block`` asks for the next run of one block, as the shift at work.
+    """
     with database.read() as session:
         card = open_study_card(session, person, study_id)
         frame = fetch_frame(session, study_id)
@@ -166,4 +175,5 @@ def log_sheet(database: Database, person: Person, study_id: int) -> LogSheet:
         rows = newest_trials(session, study_id, which="all", limit=RECENT, offset=0)
         numbers = [trial.number for trial, _ in rows]
         recent = _shown_all(frame, rows, readings_of(session, study_id, numbers), notes_of(session, study_id, numbers))
-    return LogSheet(card, cells, recent)
+        order = order_state(session, frame, block=block)
+    return LogSheet(card, cells, recent, order)

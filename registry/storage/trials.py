@@ -25,11 +25,13 @@ class NewTrial:
     phone_clock: datetime | None = None
     client_key: str | None = None
     content_hash: str | None = None
+    actual_cell: int | None = None
+    run_position: int | None = None
 
 
 _TRIAL_COLUMNS = (
     "study_id", "number", "cell", "happened_at", "phone_clock", "logged_at", "person_id", "client_key",
-    "content_hash", "kept",
+    "content_hash", "kept", "actual_cell", "run_position",
 )  # fmt: skip
 _READING_COLUMNS = ("study_id", "trial", "response_id", "steps", "kept")
 
@@ -40,7 +42,7 @@ def add_trials(
     """Write trials and their readings by the driver's own bulk path: one statement a table, or COPY."""
     rows = (
         (study_id, trial.number, trial.cell, trial.happened_at, trial.phone_clock, logged_at, person_id,
-         trial.client_key, trial.content_hash, True)
+         trial.client_key, trial.content_hash, True, trial.actual_cell, trial.run_position)
         for trial in trials
     )  # fmt: skip
     _load(session, "trial", _TRIAL_COLUMNS, rows)

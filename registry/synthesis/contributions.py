@@ -43,7 +43,8 @@ class Contribution:
 
     ``parts`` name its treatment factors in the order of the layout, then block and held
     ones. ``scale`` turns its response's unit into the unit of the question. ``tuning`` is
-    that of its plan, a multiple of a contrast's planned variance at ``per_cell`` trials.
+    that of its plan, a multiple of a contrast's planned variance at ``per_cell`` trials;
+    ``in_order`` says that every trial followed its balanced run order.
     """
 
     key: Identity
@@ -56,6 +57,7 @@ class Contribution:
     per_cell: int | None = None
     tuning: float | None = None
     alpha: float = 0.05
+    in_order: bool = False
 
     @cached_property
     def crossed(self) -> tuple[FactorPart, ...]:
@@ -169,8 +171,7 @@ def _at_any_moment(study: Contribution, found: Estimate, row: Whole, denominator
     if isinstance(value, Undefined) or isinstance(df, Undefined) or isinstance(scale, Undefined):
         return NO_SPREAD
     used = tuple(int(n) for n, k in zip(study.estimator.exact.n, row[0], strict=True) if k)
-    # No study keeps a run order yet, so trials count as run as it came.
-    if not may_speak(df, used, in_order=False):
+    if not may_speak(df, used, in_order=study.in_order):
         return TOO_SOON
     k = row.astype(float) / denominator
     blocks = next((len(part.levels) for part in study.parts if part.role == "block"), 1)

@@ -22,6 +22,7 @@ from registry.services.access import ROLES
 from registry.services.levels import series_levels
 from registry.services.opening import Database, open_registry
 from registry.services.reader_links import LinkDraft, make_link
+from registry.services.study_plan import PlanDraft, lock_plan, start_study
 from registry.services.trial_import import read_upload
 from tests.support.studies import (
     MINUTES,
@@ -76,6 +77,7 @@ trials.corrected        POST /studies/{running}/trials/1/correct 401 404      40
 trials.kept             POST /studies/{running}/trials/1/keep    401 404      403    403    303     303    303
 log.sheet               GET  /studies/{running}/log              303 404      403    200    200     200    200
 log.logged              POST /studies/{running}/log              401 404      403    303    303     303    303
+log.skipped             POST /studies/{ordered}/skip             401 404      403    303    303     303    303
 imports.upload          GET  /studies/{running}/import           303 404      403    403    200     200    200
 imports.uploaded        POST /studies/{running}/import           401 404      403    403    303     303    303
 imports.look            GET  /studies/{running}/import/{job}     303 404      403    403    200     200    200
@@ -128,6 +130,7 @@ FORMS: Mapping[str, Mapping[str, str | bytes]] = {
         "levels-start": "back",
         "readings-minutes": "7.3",
     },
+    "log.skipped": {"run": "1", "skip_reason": "the conveyor stood still"},
     "imports.uploaded": {"file": FILE},
     "imports.decided": {"drop": "yes"},
     "levels.renamed": {"name": "there and back", "reason": "that is what the crews say"},
@@ -155,6 +158,7 @@ class World:
     planned: int
     job: int
     closed: int
+    ordered: int
     level: int
     link: int
     token: str
@@ -183,7 +187,10 @@ def _fill(database: Database) -> World:
     link = make_link(
         database, place.keeper, place.series_id, draft, token=TOKEN, draw=lambda _scope, _record: {}, now=NOW
     )
-    return World(place.series_id, place.study_id, planned, job, closed[1], level, link, TOKEN)
+    ordered = another_study(database, place.keeper, place.series_id, title="In order", started=False)
+    lock_plan(database, place.keeper, ordered, PlanDraft("2"), now=NOW, seed=1)
+    start_study(database, place.keeper, ordered, now=NOW)
+    return World(place.series_id, place.study_id, planned, job, closed[1], ordered, level, link, TOKEN)
 
 
 @pytest.fixture(scope="module")

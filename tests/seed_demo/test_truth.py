@@ -42,11 +42,12 @@ def tallied(planned: PlannedStudy, rng: Random) -> Contribution:
         title=planned.title,
         tallied=TalliedStudy(layout, step, 0, dict(tallies)),
         parts=tuple(parts),
-        error="pooled" if planned.block else "per-cell",
+        error="pooled" if planned.block or planned.spread == "shared" else "per-cell",
         scale=Fraction(1, 60) if planned.unit == "s" else Fraction(1),
         standing=STANDING[planned.close_reason],
         per_cell=planned.per_cell,
         tuning=float(TUNING),
+        in_order=not planned.imported,
     )
 
 

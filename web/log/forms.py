@@ -9,6 +9,7 @@ from uuid import uuid4
 from zoneinfo import ZoneInfo
 
 from registry.errors import Fault, InputRefused
+from registry.services.run_order import RunShown
 from registry.services.study_card import FactorLine, StudyCard
 from registry.services.trial_log import TrialEntry
 
@@ -22,12 +23,15 @@ class TrialForm:
     readings: Mapping[str, str]
     happened_at: str
     note: str
+    run: str
 
     @classmethod
-    def first(cls, card: StudyCard, *, block: str) -> TrialForm:
-        """Start under a fresh key, with the block that was logged last."""
+    def first(cls, card: StudyCard, *, block: str, following: RunShown | None) -> TrialForm:
+        """Start under a fresh key, with the levels of the next run, or the block that was logged last."""
+        if following is not None:
+            return cls(str(uuid4()), following.levels, {}, "", "", str(following.position))
         levels = {card.block.name: block} if card.block else {}
-        return cls(str(uuid4()), levels, {}, "", "")
+        return cls(str(uuid4()), levels, {}, "", "", "")
 
     @classmethod
     def read(cls, sent: Mapping[str, str], card: StudyCard) -> TrialForm:
@@ -38,11 +42,20 @@ class TrialForm:
             readings={line.name: sent.get(f"readings-{line.name}", "") for line in card.responses},
             happened_at=sent.get("happened_at", ""),
             note=sent.get("note", ""),
+            run=sent.get("run", ""),
         )
 
     def entry(self, card: StudyCard) -> TrialEntry:
         """Hand the form on; a time without zone is the site's own clock."""
-        return TrialEntry(self.key, self.levels, self.readings, self._moment(card), None, self.note)
+        return TrialEntry(self.key, self.levels, self.readings, self._moment(card), None, self.note, self._run())
+
+    def _run(self) -> int | None:
+        text = self.run.strip()
+        if not text:
+            return None
+        if not (text.isascii() and text.isdigit() and len(text) < 10):
+            raise InputRefused(Fault("run", f"{text!r} given", "give the place of a run in the run order", "run"))
+        return int(text)
 
     def _moment(self, card: StudyCard) -> datetime | None:
         text = self.happened_at.strip()
@@ -60,3 +73,16 @@ class TrialForm:
 def factors_to_choose(card: StudyCard) -> tuple[FactorLine, ...]:
     """List the factors that a trial has a level of, the block first, because it changes least often."""
     return (*([card.block] if card.block else []), *card.factors)
+
+
+@dataclass(frozen=True)
+class SkipForm:
+    """Why a run is left out, as typed."""
+
+    run: str = ""
+    skip_reason: str = ""
+
+    @classmethod
+    def read(cls, sent: Mapping[str, str]) -> SkipForm:
+        """Read the form as it was typed."""
+        return cls(sent.get("run", ""), sent.get("skip_reason", ""))

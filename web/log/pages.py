@@ -9,7 +9,7 @@ from typing import ClassVar
 from registry.services.study_card import FactorLine, StudyCard
 from registry.services.trial_pages import LogSheet
 from web.forms import Choice, Faults
-from web.log.forms import TrialForm
+from web.log.forms import SkipForm, TrialForm
 from web.pages import Page
 
 
@@ -28,3 +28,5 @@ class LogPage(Page):
     uneven: bool = field(metadata={"help": "whether some combination was run more often than another"})
     yes_no: tuple[Choice, ...] = field(metadata={"help": "what a yes / no response can read"})
     faults: Faults = field(metadata={"help": "why it was not accepted, if it was sent"})
+    skip: SkipForm = field(metadata={"help": "why the next run is left out, as typed so far"})
+    skip_faults: Faults = field(metadata={"help": "why skipping was not accepted, if it was sent"})

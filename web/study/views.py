@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import secrets
+
 from flask import Blueprint, flash, jsonify, redirect, request, url_for
 from werkzeug.wrappers import Response
 
@@ -22,6 +24,7 @@ from web.study.forms import EndForm, PlanForm, StepForm
 from web.study.pages import EndPage, EventsPage, PlanPage, ReportPage, StepPage
 
 RECENT = 5
+MOST_SEEDS = 2**31
 SPREADS = choices(
     (
         ("", "By the house rule"),
@@ -105,11 +108,18 @@ def plan_locked(study_id: int) -> Response:
     card = _card_for_analyst(study_id)
     form = PlanForm.read(request.form, card)
     try:
-        lock_plan(shell.database(), shell.person(), study_id, form.draft(), now=shell.now())
+        lock_plan(
+            shell.database(),
+            shell.person(),
+            study_id,
+            form.draft(),
+            now=shell.now(),
+            seed=secrets.randbelow(MOST_SEEDS),
+        )
     except InputRefused as refusal:
         page = PlanPage(card, form, SPREADS, LOOKS, Faults.of(refusal))
         return render_page(page, status=status_of(refusal))
-    flash("The plan is locked. Start the study when trials may come in.")
+    flash("The plan is locked and its run order drawn. Start the study when trials may come in.")
     return redirect(url_for("study.show", study_id=study_id), 303)
 
 
