@@ -19,6 +19,7 @@ from registry.errors import Fault, InputRefused, RegistryError
 if TYPE_CHECKING:
     from registry.services.decompose_file import FileAnswer
     from registry.services.opening import Database
+    from registry.services.pool_file import PoolAnswer
     from registry.services.recurrence_file import RecurrenceAnswer
 
 Answer = Callable[[argparse.Namespace], int]
@@ -48,6 +49,7 @@ def build_parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action="version", version=f"weftbook {version('weftbook')}")
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     _add_decompose(commands)
+    _add_pool(commands)
     _add_recurrence(commands)
     _add_demo(commands)
     _add_serve(commands)
@@ -76,6 +78,25 @@ def _decompose(wish: argparse.Namespace) -> int:
         FileWish(wish.file, wish.response, tuple(wish.factor), wish.block, wish.step, wish.error, wish.confidence)
     )
     return _print_answer(answer, as_json=wish.json)
+
+
+def _add_pool(commands: Commands) -> None:
+    parser = commands.add_parser("pool", help="say what several studies together say of one effect")
+    parser.add_argument("file", metavar="FILE", type=Path, help="table with columns study, effect, and variance or se")
+    methods = ("paule-mandel", "dersimonian-laird", "reml", "common")
+    parser.add_argument("--method", choices=methods, default="paule-mandel", help="how studies are taken to differ")
+    parser.add_argument("--interval", choices=("hartung-knapp", "normal"), default="hartung-knapp", help="its kind")
+    parser.add_argument("--no-floor", action="store_true", help="let hartung-knapp narrow the interval as well")
+    parser.add_argument("--confidence", type=float, default=0.95, help="of the intervals, 0.95 when left out")
+    parser.add_argument("--json", action="store_true", help="answer as a record to script against")
+    parser.set_defaults(answer=_pool)
+
+
+def _pool(wish: argparse.Namespace) -> int:
+    from registry.services.pool_file import PoolWish, pool_file
+
+    asked = PoolWish(wish.file, wish.method, wish.interval, not wish.no_floor, wish.confidence)
+    return _print_answer(pool_file(asked), as_json=wish.json)
 
 
 def _add_recurrence(commands: Commands) -> None:
@@ -112,7 +133,7 @@ def _recurrence(wish: argparse.Namespace) -> int:
     )
 
 
-def _print_answer(answer: FileAnswer | RecurrenceAnswer, *, as_json: bool) -> int:
+def _print_answer(answer: FileAnswer | RecurrenceAnswer | PoolAnswer, *, as_json: bool) -> int:
     if as_json:
         json.dump(answer.record(), sys.stdout, ensure_ascii=False, allow_nan=False, indent=1)
         print()
