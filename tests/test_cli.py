@@ -62,8 +62,10 @@ def test_the_record_has_every_entry_of_its_format(capsys: pytest.CaptureFixture[
     assert [line["factors"] for line in record["terms"]] == [
         ["fcategory"], ["partner_status"], ["fcategory", "partner_status"],
     ]  # fmt: skip
+    assert {"per_cell", "partial_eta_squared", "omega_squared", "offsets"} <= set(record["terms"][0])
+    assert "unreplicated" not in record
     assert set(record["comparisons"][0]) == {
-        "factor", "from", "to", "difference", "se", "df", "p_unadjusted", "tukey_kramer",
+        "factor", "from", "to", "difference", "se", "df", "p_unadjusted", "tukey_kramer", "games_howell",
     }  # fmt: skip
 
 

@@ -12,6 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from registry.analysis.coefficients import (
+    contrast_rows,
     interaction_rows,
     mean_rows,
     offset_rows,
@@ -29,6 +30,7 @@ from registry.analysis.divisions import SS, Division, Share, TermShares
 from registry.analysis.estimation import Estimator, root
 from registry.analysis.exact import ExactStudy
 from registry.analysis.notes import notes_of
+from registry.analysis.own_spread import welch_james
 from registry.analysis.results import (
     CellSummary,
     Comparison,
@@ -39,13 +41,14 @@ from registry.analysis.results import (
     InteractionContrast,
     MarginalMean,
     Offset,
+    OwnSpreadTest,
     Residual,
     SimpleEffect,
     SumOfSquares,
     TermResult,
     Total,
 )
-from registry.analysis.undefined import EMPTY_CELL, NO_SPREAD, Number, Undefined
+from registry.analysis.undefined import BLOCKS_SHARE, EMPTY_CELL, NO_SPREAD, Number, Undefined
 from registry.errors import Fault, InputRefused
 from registry.trials.tallies import TalliedStudy
 from registry.trials.terms import Term, all_terms
@@ -158,6 +161,7 @@ class _Work:
             self._line(shares.sequential),
             self._line(shares.hierarchical),
             self._line(shares.equal_weight),
+            welch_james(self.exact, contrast_rows(self.exact.layout, shares.term)),
             () if shares.aliased else tuple(self._offsets(shares.term)),
         )
 
@@ -171,6 +175,7 @@ class _Work:
             self._line(shares.sequential),
             self._line(shares.hierarchical),
             self._line(shares.equal_weight),
+            OwnSpreadTest(BLOCKS_SHARE, shares.df, BLOCKS_SHARE, BLOCKS_SHARE),
             (),
         )
 
@@ -219,8 +224,11 @@ class _Work:
             differences, pairs = pair_rows(rows)
             values = self.division.fit.values(differences, denominator, of_mean=False)
             errors = self.by.errors(differences.astype(float) / denominator, values)
-            pooled = self.division.fit.pooled_variance(differences.astype(float) / denominator)
-            for value, (se, df), variance, (first, second) in zip(values, errors, pooled, pairs, strict=True):
+            rows = differences.astype(float) / denominator
+            pooled, own = self.division.fit.pooled_variance(rows), self.division.fit.own_variance(rows)
+            for value, (se, df), variance, (own_variance, own_df), (first, second) in zip(
+                values, errors, pooled, own, pairs, strict=True
+            ):
                 comparisons.append(
                     Comparison(
                         factor.name,
@@ -231,6 +239,8 @@ class _Work:
                         df,
                         _unadjusted(value, se, df),
                         self._tukey_kramer(value, float(variance), len(factor.levels)),
+                        root(own_variance),
+                        own_df,
                     )
                 )
         return comparisons

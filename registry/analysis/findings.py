@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import comb, sqrt
+from math import comb
 from typing import Literal
 
-from registry.analysis.distributions import studentized_range_quantile, t_quantile
+from registry.analysis.distributions import t_quantile
+from registry.analysis.own_spread import games_howell
 from registry.analysis.results import Comparison, Decomposition, InteractionContrast
 from registry.analysis.undefined import Number, Undefined
 
@@ -65,13 +66,9 @@ def judge_difference(result: Decomposition, comparison: Comparison, *, margin: f
     if result.error == "pooled":
         family = comparison.tukey_kramer
         return judge(comparison.difference, family.lower, family.upper, margin=margin)
-    value, se, df = comparison.difference, comparison.se, comparison.df
-    if isinstance(value, Undefined) or isinstance(se, Undefined) or isinstance(df, Undefined):
-        reason = next(part for part in (value, se, df) if isinstance(part, Undefined))
-        return judge(value, reason, reason, margin=margin)
     levels = next(len(factor.levels) for factor in result.layout.factors if factor.name == comparison.factor)
-    reach = studentized_range_quantile(result.confidence, levels, df) / sqrt(2) * se
-    return judge(value, value - reach, value + reach, margin=margin)
+    family = games_howell(comparison, levels=levels, confidence=result.confidence)
+    return judge(comparison.difference, family.lower, family.upper, margin=margin)
 
 
 def judge_interaction(result: Decomposition, contrast: InteractionContrast, *, margin: float | None) -> Finding:

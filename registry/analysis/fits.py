@@ -15,6 +15,7 @@ from registry.analysis.exact import ExactStudy
 from registry.analysis.undefined import (
     BLOCKS_SHARE,
     EMPTY_CELL,
+    LONE_TRIAL,
     NO_SPREAD,
     Number,
     Undefined,
@@ -101,8 +102,7 @@ class CellFit:
             if np.any(n[used] == 0):
                 answers.append((EMPTY_CELL, EMPTY_CELL))
             elif np.any(n[used] < 2):
-                lone = Undefined("its own spread needs two trials in every combination used")
-                answers.append((lone, lone))
+                answers.append((LONE_TRIAL, LONE_TRIAL))
             else:
                 parts = row[used] ** 2 * v[used] / n[used]
                 whole = parts.sum()

@@ -46,6 +46,16 @@ class SumOfSquares:
 
 
 @dataclass(frozen=True)
+class OwnSpreadTest:
+    """A term tested with each combination's own spread: F on df1 and df2 degrees of freedom."""
+
+    f: Number
+    df1: int
+    df2: Number
+    p: Number
+
+
+@dataclass(frozen=True)
 class Offset:
     """How far one combination of a term's levels stands off what the lower terms add up to."""
 
@@ -64,6 +74,7 @@ class TermResult:
     sequential: SumOfSquares
     hierarchical: SumOfSquares
     equal_weight: SumOfSquares
+    per_cell: OwnSpreadTest
     offsets: tuple[Offset, ...]
 
 
@@ -106,7 +117,11 @@ class FamilyInterval:
 
 @dataclass(frozen=True)
 class Comparison:
-    """Two levels of a factor: difference = mean(to) - mean(from) of equal-weight means."""
+    """Two levels of a factor: difference = mean(to) - mean(from) of equal-weight means.
+
+    ``se`` and ``df`` follow the error policy; ``own_se`` and ``own_df`` are always those of
+    each combination's own spread (Satterthwaite).
+    """
 
     factor: str
     from_level: str
@@ -116,6 +131,8 @@ class Comparison:
     df: Number
     p_unadjusted: Number
     tukey_kramer: FamilyInterval
+    own_se: Number
+    own_df: Number
 
 
 @dataclass(frozen=True)
