@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from registry.services.pool_file import PoolAnswer
     from registry.services.recurrence_file import RecurrenceAnswer
 
+LAST_PORT = 65535
 Answer = Callable[[argparse.Namespace], int]
 Commands: TypeAlias = "argparse._SubParsersAction[argparse.ArgumentParser]"
 
@@ -41,6 +42,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
         # Whoever read the output has seen enough; nothing is left to say.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
+    except OSError as error:
+        print(f"weftbook: {error.filename or 'output'}: {error.strerror}; nothing was answered", file=sys.stderr)
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 1
 
 
 def build_parser() -> argparse.ArgumentParser:
@@ -139,22 +144,30 @@ def _print_answer(answer: FileAnswer | RecurrenceAnswer | PoolAnswer, *, as_json
         print()
     else:
         print(answer.report(), end="")
+    sys.stdout.flush()  # What cannot be written must be told while the exit status still can.
     return 0
 
 
 def _add_demo(commands: Commands) -> None:
     parser = commands.add_parser("demo", help="serve an invented parts depot to look around in")
     parser.add_argument("--host", default="127.0.0.1", help="address to listen on")
-    parser.add_argument("--port", type=int, default=8000, help="port to listen on; 0 takes a free one")
+    parser.add_argument("--port", type=_port, default=8000, help="port to listen on; 0 takes a free one")
     parser.add_argument("--no-browser", action="store_true", help="do not open a browser")
     parser.add_argument("--at", metavar="DIR", type=Path, help="folder to make the registry in; else a temporary one")
     parser.set_defaults(answer=_demo)
 
 
+def _port(text: str) -> int:
+    if not (text.isascii() and text.isdigit() and int(text) <= LAST_PORT):
+        raise argparse.ArgumentTypeError(f"{text!r} given, give a whole number from 0 to {LAST_PORT}")
+    return int(text)
+
+
 def _demo(wish: argparse.Namespace) -> int:
     from seed_demo.running import run_demo
-    from web.serving import serve
+    from web.serving import serve, try_address
 
+    try_address(wish.host, wish.port)
     return run_demo(
         serve,
         host=wish.host,

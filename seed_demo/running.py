@@ -13,7 +13,7 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import Protocol
 
-from registry.errors import AlreadyThere, Fault
+from registry.errors import AlreadyThere, Fault, InputRefused
 from registry.services.opening import Database, open_registry
 from registry.services.settings import PasswordCost, Settings
 from registry.services.upkeep import upgrade
@@ -69,7 +69,11 @@ def run_demo(
 
 
 def _fresh_file(place: Path) -> Path:
-    place.mkdir(parents=True, exist_ok=True)
+    try:
+        place.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        reason = (error.strerror or str(error)).lower()
+        raise InputRefused(Fault("--at", f"{place}: {reason}", "give a folder that can be made or written")) from error
     file = place / "weftbook.db"
     if file.exists():
         raise AlreadyThere(Fault("--at", f"{file} is there already", "give another folder, or remove it"))

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import json
+import subprocess
+import sys
 from pathlib import Path
 from typing import Any
 
@@ -92,7 +94,7 @@ def test_a_report_without_json_reads_from_the_answer_to_the_table(capsys: pytest
     out = capsys.readouterr().out
     assert code == 0
     assert out.startswith("y by N × P × K: 24 trials, balanced, in steps of 0.1.")
-    assert "The widest difference: N 1 is 5.61667 above 0" in out
+    assert "The widest difference: N 1 is 5.617 above 0" in out
     assert "- N × P × K: aliased with blocks" in out
 
 
@@ -187,6 +189,73 @@ def test_upgrade_makes_the_tables_and_serve_needs_a_secret(
     assert main(["serve"]) == 1
     assert "WEFTBOOK_SECRET: not set; set it to at least 32 random characters" in capsys.readouterr().err
     open_database(f"sqlite:///{tmp_path / 'new.db'}").dispose()
+
+
+def test_a_term_that_runs_with_the_blocks_is_aliased_and_nothing_is_made_of_it(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    path = tmp_path / "nested.csv"
+    rows = [f"{'early' if a == 'x' else 'late'},{a},{b},{10 + at}" for at in range(3) for a in "xy" for b in "pq"]
+    path.write_text("shift,a,b,minutes\n" + "\n".join(rows) + "\n")
+    options = ("--response", "minutes", "--factor", "a", "--factor", "b", "--block", "shift")
+
+    record = decomposed(capsys, path, *options)
+
+    aliased = record["comparisons"][0]
+    assert (aliased["factor"], aliased["difference"], aliased["tukey_kramer"]["p"]) == ("a", None, None)
+    means = [mean["equal_weight"]["estimate"] for mean in record["marginal_means"] if "a" in mean["levels"]]
+    assert means
+    assert set(means) == {None}
+    assert "a: aliased with blocks" in record["notes"]
+    assert main(["decompose", str(path), *options]) == 0
+
+
+def test_an_answer_that_cannot_be_written_is_told(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    path = tmp_path / "tours.csv"
+    path.write_text("walk,minutes\na,1\nb,2\na,2\nb,4\n")
+    wish = ["decompose", str(path), "--response", "minutes", "--factor", "walk"]
+    code = f"import sys; from registry.cli import main; sys.exit(main({wish!r}))"
+
+    with Path("/dev/full").open("w") as full:
+        done = subprocess.run([sys.executable, "-c", code], stdout=full, stderr=subprocess.PIPE, text=True, check=False)
+
+    assert done.returncode == 1
+    assert done.stderr == "weftbook: output: No space left on device; nothing was answered\n"
+
+
+def test_a_device_is_no_table(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["decompose", "/dev/zero", "--response", "y", "--factor", "a"]) == 1
+    assert "/dev/zero: it is a device; give the path of a CSV file or workbook" in capsys.readouterr().err
+
+
+def test_a_file_that_is_no_database_is_refused_in_one_line(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    path = tmp_path / "not.db"
+    path.write_bytes(b"this is no database" * 100)
+    monkeypatch.setenv("WEFTBOOK_DATABASE_URL", f"sqlite:///{path}")
+
+    for command in ("recount", "upgrade"):
+        assert main([command]) == 1
+        error = capsys.readouterr().err
+        assert "database: file is not a database" in error
+        assert error.count("\n") == 1
+
+
+@pytest.mark.parametrize("port", ["99999", "-1", "http"])
+def test_a_port_that_is_none_is_wrong_usage(port: str, capsys: pytest.CaptureFixture[str]) -> None:
+    with pytest.raises(SystemExit) as stopped:
+        main(["demo", "--port", port])
+    assert stopped.value.code == 2
+    assert "give a whole number from 0 to 65535" in capsys.readouterr().err
+
+
+def test_a_demo_folder_that_cannot_be_made_is_refused(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    taken = tmp_path / "taken"
+    taken.write_text("a file")
+
+    assert main(["demo", "--no-browser", "--port", "0", "--at", str(taken)]) == 1
+    assert "--at: " in capsys.readouterr().err
 
 
 def test_wrong_usage_exits_with_two(capsys: pytest.CaptureFixture[str]) -> None:

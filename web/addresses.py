@@ -11,6 +11,8 @@ MOST = 2**63 - 1
 class KeyConverter(IntegerConverter):
     """A key of the record; a number that no database column holds stands for nothing that exists."""
 
+    regex = "[0-9]+"
+
     def __init__(self, url_map: Map) -> None:
         super().__init__(url_map, min=1, max=MOST)
 

@@ -160,7 +160,8 @@ def _divide_blocked(study: ExactStudy) -> Division:
     stay = [term for term in terms if term not in gone]
     sequential = _in_order(ground, first.model, stay, columns)
     full = ground.grow(first.model, stack([columns[term] for term in stay], len(cells)))
-    fit = _block_fit(study, ground, in_block, [over_cells[term] for term in stay], cells)
+    lost = stack([over_cells[term] for term in sorted(gone)], len(study.cells))
+    fit = _block_fit(study, ground, in_block, [over_cells[term] for term in stay], cells, lost)
     shares = [
         TermShares(
             term,
@@ -197,7 +198,12 @@ def _aliased_shares(study: ExactStudy, term: Term) -> TermShares:
 
 
 def _block_fit(
-    study: ExactStudy, ground: WeightedCells, in_block: Floats, over_cells: list[Floats], cells: npt.NDArray[np.int64]
+    study: ExactStudy,
+    ground: WeightedCells,
+    in_block: Floats,
+    over_cells: list[Floats],
+    cells: npt.NDArray[np.int64],
+    dropped: Floats,
 ) -> BlockFit:
     ones = np.full((len(study.cells), 1), 1.0 / np.sqrt(len(study.cells)))
     treatment = np.hstack([ones, *over_cells])
@@ -210,4 +216,4 @@ def _block_fit(
     seen[: len(sizes)] = sizes > 1e-9 * sizes[0]
     kept = right[seen].T / sizes[seen[: len(sizes)]]
     beta = kept @ (left[:, : len(sizes)][:, seen[: len(sizes)]].T @ (ground.means * root))
-    return BlockFit(study, cell_model, beta, kept @ kept.T, right[~seen].T)
+    return BlockFit(study, cell_model, beta, kept @ kept.T, right[~seen].T, dropped)

@@ -13,7 +13,9 @@ import numpy.typing as npt
 from registry.analysis.coefficients import orthonormal
 from registry.analysis.exact import ExactStudy
 from registry.analysis.undefined import (
+    ALIASED,
     BLOCKS_SHARE,
+    CONFOUNDED,
     EMPTY_CELL,
     LONE_TRIAL,
     NO_SPREAD,
@@ -139,7 +141,8 @@ class BlockFit:
 
     ``cell_model`` (cells × columns) gives the expected cell means from the coefficients
     ``beta``; ``inverse`` is their covariance in units of the residual mean square;
-    ``unseen`` (columns × d) spans what the trials say nothing about.
+    ``unseen`` (columns × d) spans what the trials say nothing about; ``dropped`` (cells × d)
+    the terms that are aliased with blocks and so left out of the model.
     """
 
     study: ExactStudy
@@ -147,6 +150,7 @@ class BlockFit:
     beta: Floats
     inverse: Floats
     unseen: Floats
+    dropped: Floats
 
     def estimable(self, rows: Floats) -> npt.NDArray[np.bool_]:
         """Say which rows have no part in what the trials say nothing about."""
@@ -160,9 +164,22 @@ class BlockFit:
         """Combine expected cell means, in floats; the centre is put back under a mean."""
         coefficients = rows.astype(float) / denominator
         known = self.estimable(coefficients)
+        aliased = self._aliased(coefficients)
         base = self.study.value(self.study.centre.numerator, self.study.centre.denominator, of_mean=True)
         numbers = self.centred(coefficients) + (base if of_mean else 0.0)
-        return [float(number) if can else EMPTY_CELL for number, can in zip(numbers, known, strict=True)]
+        empty = np.any((rows != 0) & ~self.study.filled, axis=1)
+        return [
+            (EMPTY_CELL if hole else CONFOUNDED) if not can else ALIASED if lost else float(number)
+            for number, can, lost, hole in zip(numbers, known, aliased, empty, strict=True)
+        ]
+
+    def _aliased(self, rows: Floats) -> npt.NDArray[np.bool_]:
+        """Say which rows have a part in a term that the model left out: without it they would say something else."""
+        if not self.dropped.size:
+            return np.zeros(len(rows), dtype=bool)
+        part: Floats = np.abs(rows @ self.dropped).max(axis=1)
+        lost: npt.NDArray[np.bool_] = part > _NEARLY_ZERO * np.abs(rows).sum(axis=1).clip(min=1e-300)
+        return lost
 
     def pooled_variance(self, rows: Floats) -> Floats:
         """Quadratic forms in the covariance of the coefficients."""
@@ -188,5 +205,7 @@ class BlockFit:
         differences = np.zeros((len(cells) - 1, len(self.study.cells)))
         differences[:, list(cells)] = orthonormal(len(cells)).T
         differences = differences[self.estimable(differences)]
-        values = self.centred(differences)
-        return len(values), float(values @ np.linalg.solve(self.covariance(differences), values))
+        values, covariance = self.centred(differences), self.covariance(differences)
+        # Differences that only a dropped term would tell apart are 0 in the model, with no variance of their own.
+        rank = int(np.linalg.matrix_rank(covariance, hermitian=True)) if len(values) else 0
+        return rank, float(values @ np.linalg.pinv(covariance, hermitian=True) @ values) if rank else 0.0

@@ -9,6 +9,7 @@ from decimal import Decimal
 from pathlib import Path
 
 from registry.errors import Fault, InputRefused, ReadingRefused
+from registry.exchange.csv_trouble import csv_trouble
 from registry.exchange.workbooks import first_sheet
 from registry.trials.readings import read_decimal
 
@@ -76,7 +77,7 @@ def _rows(path: Path) -> Iterator[tuple[int, Sequence[str]]]:
     except UnicodeDecodeError:
         raise InputRefused(Fault(path.name, "it is not text in UTF-8", "save it as CSV in UTF-8")) from None
     except csv.Error as error:
-        raise InputRefused(Fault(path.name, str(error), "check the quotes")) from None
+        raise InputRefused(Fault(path.name, csv_trouble(error), "check the quotes")) from None
 
 
 def _read(path: Path, line: int, spread: str, texts: Sequence[str]) -> EffectRow:

@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import Any
 
 from registry.errors import Fault, InputRefused, ReadingRefused
+from registry.exchange.csv_trouble import csv_trouble
 from registry.exchange.workbooks import first_sheet
 from registry.trials.factors import Factor
 from registry.trials.layouts import Layout
@@ -139,6 +140,8 @@ def _refuse_one_column_twice(columns: Columns) -> None:
 
 def _rows(path: Path) -> Iterator[Sequence[str]]:
     """Give the rows of the file as texts, the heads first; blank rows are not rows."""
+    if path.is_char_device() or path.is_block_device():
+        raise InputRefused(Fault(str(path), "it is a device", "give the path of a CSV file or workbook"))
     if path.suffix.lower() == ".xlsx":
         yield from first_sheet(path.name, path.read_bytes())
         return
@@ -171,7 +174,7 @@ def _count_rows(path: Path, columns: Columns) -> Counter[tuple[str, ...]]:
             Fault(f"{path.name}, line {_undecodable_line(path)}", "it is not text in UTF-8", "save it as CSV in UTF-8")
         ) from None
     except csv.Error as error:
-        raise InputRefused(Fault(f"{path.name}, {_bad_line(path)}", str(error), "check the quotes")) from None
+        raise InputRefused(Fault(f"{path.name}, {_bad_line(path)}", csv_trouble(error), "check the quotes")) from None
     if not counts:
         raise InputRefused(Fault(path.name, "it has heads and no rows", "give one trial a row below the heads"))
     return counts

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from io import StringIO
 
 from registry.errors import Fault, InputRefused
+from registry.exchange.csv_trouble import csv_trouble
 
 LARGEST_UPLOAD = 20 * 1024 * 1024
 DELIMITERS = (",", ";", "\t")
@@ -74,7 +75,7 @@ def _rows_of_text(name: str, content: bytes) -> Iterator[UploadedRow]:
             yield UploadedRow(line, tuple(values))
             line = reader.line_num + 1
     except csv.Error as error:
-        raise _refused(f"{name}, line {line}", str(error), "check the quotes of that row") from None
+        raise _refused(f"{name}, line {line}", csv_trouble(error), "check the quotes of that row") from None
 
 
 def _rows_of_workbook(name: str, content: bytes) -> Iterator[UploadedRow]:

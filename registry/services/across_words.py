@@ -48,7 +48,7 @@ def verdict_sentence(recurrence: Recurrence) -> str:
         case "opposite":
             return "At least one study shows it one way and at least one the other."
         case "seen_again":
-            agree = " Every study agrees in sign." if recurrence.agree_in_sign else ""
+            agree = " Every estimate has the same sign." if recurrence.agree_in_sign else ""
             return f"At least {max(counts.up, counts.down)} of {k} studies show it, in the same direction.{agree}"
         case "once":
             return "At least one study shows it; not yet two."

@@ -8,7 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from registry.analysis.results import ErrorPolicy
-from registry.errors import Fault, InputRefused
+from registry.errors import Fault, InputRefused, ReadingRefused
 from registry.exchange.trial_table import Columns, TalliedTablePart, tally_studies
 from registry.services.lasting_names import LevelName, Names
 from registry.services.recurrence_record import board_record
@@ -57,7 +57,10 @@ def recurrence_file(wish: RecurrenceWish) -> RecurrenceAnswer:
         raise InputRefused(Fault("--factor", f"{len(wish.factors)} given", "name at least two, an interaction has two"))
     if not 0 < wish.fdr < 1:
         raise InputRefused(Fault("--fdr", f"{wish.fdr} given", "give a number between 0 and 1, as 0.05"))
-    margin = read_decimal(wish.margin)
+    try:
+        margin = read_decimal(wish.margin)
+    except ReadingRefused as error:
+        raise InputRefused(Fault("--margin", error.faults[0].given, "give a number above 0, for example 0.8")) from None
     if margin <= 0:
         raise InputRefused(Fault("--margin", f"{wish.margin} given", "give a number above 0, in units of the response"))
     parts = tally_studies(wish.path, Columns(wish.response, wish.factors, wish.block, study=wish.study))

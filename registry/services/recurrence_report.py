@@ -27,7 +27,12 @@ def as_report(board: Board, names: Names, *, response: str, margin: Decimal, not
 def _lines(board: Board, names: Names, *, response: str, margin: Decimal, notes: Sequence[str]) -> Iterator[str]:
     yield f"Interactions in {response} across studies; margin that matters {margin:f}"
     if not board.recurrences:
-        yield "No study crosses two of these factors, so there is nothing to see again."
+        crossed = any(omitted.crossed for omitted in board.omitted)
+        yield (
+            "No study can estimate an interaction; the notes say why."
+            if crossed
+            else "No study crosses two of these factors, so there is nothing to see again."
+        )
     for recurrence in board.recurrences:
         yield ""
         yield from _contrast(recurrence, names)

@@ -80,12 +80,21 @@ def _findings(response: ResponseLine, result: Decomposition) -> Iterator[str]:
     told = [(finding, pair) for finding, pair in differences if finding.code in ("act", "real")]
     told.sort(key=lambda each: -abs(_value(each[0].estimate)))
     for finding, pair in told[:MOST_SAID]:
-        yield f"{_difference(finding, pair, response)}: {finding.words}."
+        varies = _varies_with(pair.factor, result, margin=margin)
+        yield f"{_difference(finding, pair, response)}{_averaged(pair.factor, result)}: {finding.words}{varies}."
     changes = [(judge_interaction(result, each, margin=margin), each) for each in result.interactions]
     real = [(finding, each) for finding, each in changes if finding.code in ("act", "real")]
     real.sort(key=lambda each: -abs(_value(each[0].estimate)))
     for finding, each in real[:MOST_SAID]:
         yield f"{_interaction(finding, each, response)}: {finding.words}."
+    hidden = [
+        pair.factor
+        for finding, pair in differences
+        if finding.code in ("small", "unsettled") and _varies_with(pair.factor, result, margin=margin)
+    ]
+    for factor in dict.fromkeys(hidden):
+        varies = _varies_with(factor, result, margin=margin).removeprefix("; it ")
+        yield f"What {factor} does {varies}, so its average says little."
     quiet = sum(finding.code == "small" for finding, _ in [*differences, *changes])
     open_ = sum(finding.code == "unsettled" for finding, _ in [*differences, *changes])
     if quiet:
@@ -94,6 +103,24 @@ def _findings(response: ResponseLine, result: Decomposition) -> Iterator[str]:
         yield f"{_count(open_)} not settled."
     if margin is None:
         yield "No margin that matters was stated, so only directions are judged."
+
+
+def _averaged(factor: str, result: Decomposition) -> str:
+    """Say what a difference between two levels is averaged over."""
+    others = [each.name for each in result.layout.factors if each.name != factor]
+    return f", averaged over {' and '.join(others)}" if others else ""
+
+
+def _varies_with(factor: str, result: Decomposition, *, margin: float | None) -> str:
+    """Name the factors that a difference is found to depend on."""
+    found = [
+        other
+        for contrast in result.interactions
+        if factor in contrast.factors and judge_interaction(result, contrast, margin=margin).code in ("act", "real")
+        for other in contrast.factors
+        if other != factor
+    ]
+    return f"; it varies with {' and '.join(dict.fromkeys(found))}" if found else ""
 
 
 def _count(number: int) -> str:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from datetime import datetime
 
@@ -17,6 +17,8 @@ from registry.storage.engine import Database
 from registry.storage.frame import StudyFrame, fetch_frame
 from registry.storage.history import Happening
 from registry.storage.studies import TrialCount, add_plan, plans_of, set_margin, trial_counts
+from registry.storage.tables import Plan
+from registry.storage.trials import counts_by_cell
 from registry.storage.units import StudyUnit, write_study
 
 MOST_PER_CELL = 1_000_000
@@ -134,21 +136,37 @@ def close_study(database: Database, person: Person, study_id: int, *, reason: st
 def _checked_closing(unit: StudyUnit, reason: str, note: str) -> str:
     faults: list[Fault] = []
     if reason not in CLOSE_REASONS:
-        faults.append(Fault("reason", f"{reason!r} given", "choose size reached, early or extended", "reason"))
+        faults.append(
+            Fault(
+                "reason", f"{reason!r} given", "choose size reached, early or extended, or give the study up", "reason"
+            )
+        )
     words = checked_text(note, where="note", field="note", faults=faults, needed=reason in ("early", "extended"))
     plan = plans_of(unit.session, [unit.study.id]).get(unit.study.id)
     count = trial_counts(unit.session, [unit.study.id]).get(unit.study.id, TrialCount())
     kept = count.logged - count.set_aside
     if reason == "size_reached" and plan is None:
         faults.append(Fault("reason", "no size was planned", "close it as early or extended", "reason"))
-    elif reason == "size_reached" and plan is not None and kept < plan.planned:
-        faults.append(
-            Fault("reason", f"{kept} of {plan.planned} planned trials count",
-                  f"log {plan.planned - kept} more, or close it as early", "reason")
-        )  # fmt: skip
+    elif reason == "size_reached" and plan is not None:
+        faults += _size_faults(unit, plan, kept=kept)
     if faults:
         raise InputRefused(faults)
     return words
+
+
+def _size_faults(unit: StudyUnit, plan: Plan, *, kept: int) -> Iterator[Fault]:
+    """Refuse a size as reached while any combination has fewer trials than were promised of each."""
+    counts = counts_by_cell(unit.session, unit.study.id)
+    frame = fetch_frame(unit.session, unit.study.id)
+    missing = sum(max(0, plan.per_cell - counts.get(cell, 0)) for cell in frame.ranks)
+    if kept < plan.planned:
+        given = f"{kept} of {plan.planned} planned trials count"
+    else:
+        least = min(frame.ranks, key=lambda cell: counts.get(cell, 0))
+        levels = ", ".join(frame.levels_of(least).values())
+        given = f"{levels} has {counts.get(least, 0)} of the {plan.per_cell} trials planned of each combination"
+    if missing:
+        yield Fault("reason", given, f"log {missing} more where they are missing, or close it as early", "reason")
 
 
 def withdraw_study(database: Database, person: Person, study_id: int, *, note: str, now: datetime) -> None:

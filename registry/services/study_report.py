@@ -7,7 +7,7 @@ from typing import Any
 
 from registry.analysis.decomposition import decompose
 from registry.analysis.findings import Finding, judge_difference, judge_interaction
-from registry.analysis.results import Decomposition, SumOfSquares
+from registry.analysis.results import Decomposition, ErrorPolicy, SumOfSquares, TermResult
 from registry.analysis.undefined import Number, Undefined
 from registry.errors import Fault, NotFound
 from registry.services.build_up import BuildUp, build_up
@@ -35,7 +35,7 @@ class DivisionLine:
 
 @dataclass(frozen=True)
 class SourceLine:
-    """A term among the sources of variation, by each division."""
+    """A term among the sources of variation, by each division; ``f`` and ``p`` follow the study's spread policy."""
 
     name: str
     role: str
@@ -44,6 +44,8 @@ class SourceLine:
     equal_weight: DivisionLine
     sequential: DivisionLine
     hierarchical: DivisionLine
+    f: Figure
+    p: Figure
 
 
 @dataclass(frozen=True)
@@ -189,6 +191,7 @@ def _findings(
                 _line(term.equal_weight),
                 _line(term.sequential),
                 _line(term.hierarchical),
+                *_judged(term, result.error),
             )
             for term in result.terms
         ),
@@ -209,6 +212,15 @@ def _findings(
         notes=result.notes,
         record=as_record(result, response=line.name, step=line.step),
     )
+
+
+def _judged(term: TermResult, error: ErrorPolicy) -> tuple[Figure, Figure]:
+    """Give the F and p that the study's one spread policy asks for; a block's is that of the first division."""
+    if term.role == "block":
+        return figure(term.sequential.f), figure(term.sequential.p)
+    if error == "per-cell":
+        return figure(term.per_cell.f), figure(term.per_cell.p)
+    return figure(term.equal_weight.f), figure(term.equal_weight.p)
 
 
 def _contrast(name: str, finding: Finding, judged: bool) -> ContrastLine:

@@ -6,6 +6,7 @@ import json
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
+from decimal import Decimal
 from math import prod
 from typing import Any
 from zoneinfo import available_timezones
@@ -31,6 +32,8 @@ from registry.trials.units import unit as find_unit
 
 MOST_FACTORS = 6
 MOST_CELLS = 4096
+# Beyond these no reading of anything would be within the exact bounds of a tally.
+SMALLEST_STEP, LARGEST_STEP = Decimal("1e-9"), Decimal("1e9")
 
 WANTED = ("lower", "higher", "none")
 KINDS = ("measured", "yes_no")
@@ -198,7 +201,11 @@ def _checked_response(place: int, draft: ResponseDraft, faults: list[Fault]) -> 
     except UnitRefused:
         faults.append(Fault(f"{where}, unit", f"{unit!r} given", "choose one from the list", f"{field}-unit"))
     try:
-        step = str(Step.parse(step))
+        parsed = Step.parse(step)
+        step = str(parsed)
+        if not SMALLEST_STEP <= parsed.size <= LARGEST_STEP:
+            accepted = f"give a step from {SMALLEST_STEP:f} to {LARGEST_STEP:f}"
+            faults.append(Fault(f"{where}, step", f"{step} given", accepted, f"{field}-step"))
     except InputRefused as error:
         fault = error.faults[0]
         faults.append(Fault(f"{where}, step", fault.given, fault.accepted, f"{field}-step"))

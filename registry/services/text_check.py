@@ -10,6 +10,7 @@ from registry.trials.readings import Step
 
 LONGEST_NAME = 200
 LONGEST_TEXT = 4000
+_TURNS = frozenset({"LRE", "RLE", "LRO", "RLO", "PDF", "LRI", "RLI", "FSI", "PDI"})
 
 
 def checked_name(text: str, *, where: str, field: str, faults: list[Fault]) -> str:
@@ -37,8 +38,13 @@ def checked_text(text: str, *, where: str, field: str, faults: list[Fault], need
 
 
 def _has_control(text: str, *, allowed: str) -> bool:
-    # Cc are control characters, Cs halves of a broken character; neither can be shown or sent back.
-    return any(unicodedata.category(character) in ("Cc", "Cs") for character in text if character not in allowed)
+    # Cc are control characters, Cs halves of a broken character; neither can be shown or sent back. What turns the
+    # direction of writing would make a name read as another one.
+    return any(
+        unicodedata.category(character) in ("Cc", "Cs") or unicodedata.bidirectional(character) in _TURNS
+        for character in text
+        if character not in allowed
+    )
 
 
 def checked_margin(text: str, *, where: str, field: str, faults: list[Fault]) -> str | None:

@@ -14,6 +14,7 @@ from registry.trials.tallies import MAX_DISTANCE
 CLOCK_SLACK = timedelta(hours=1)
 
 # A reading itself stays well inside 64 bits, so that no sum on the way can leave them.
+EARLIEST_YEAR = 1970
 FARTHEST_READING = 2**62
 
 _YES_NO = {"yes": 1, "y": 1, "true": 1, "1": 1, "no": 0, "n": 0, "false": 0, "0": 0}
@@ -119,8 +120,11 @@ def far_reading(response: FrameResponse, steps: int, *, anchor: int, place: str,
 
 
 def time_faults(happened_at: datetime | None, *, now: datetime, where: str) -> list[Fault]:
-    """Refuse a time without zone, or one that has not come yet."""
+    """Refuse a time without zone, one before there were such records, or one that has not come yet."""
     place = placed(where, "time")
+    if happened_at is not None and happened_at.year < EARLIEST_YEAR:
+        given = f"the year {happened_at.year} given"
+        return [Fault(place, given, f"give a time from {EARLIEST_YEAR} on", "happened_at")]
     if happened_at is not None and happened_at.tzinfo is None:
         return [
             Fault(place, f"{happened_at} has no time zone", "give one, as in 2026-03-02T14:05+01:00", "happened_at")

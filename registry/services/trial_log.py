@@ -13,7 +13,15 @@ from uuid import UUID
 from registry.errors import AlreadyThere, Fault, InputRefused, NotNow, ReadingRefused
 from registry.services.access import require_study
 from registry.services.people import Person
-from registry.services.trial_check import checked_reading, far_reading, find_cell, placed, shown_reading, time_faults
+from registry.services.trial_check import (
+    EARLIEST_YEAR,
+    checked_reading,
+    far_reading,
+    find_cell,
+    placed,
+    shown_reading,
+    time_faults,
+)
 from registry.storage.engine import Database
 from registry.storage.frame import StudyFrame, fetch_frame
 from registry.storage.history import Happening
@@ -116,8 +124,8 @@ def _earlier(unit: StudyUnit, entries: Sequence[TrialEntry]) -> dict[str, int]:
             raise AlreadyThere(
                 Fault(
                     "key",
-                    f"{entry.key} was used for trial {trial.number} with other content",
-                    "send a new trial under a new key, or correct that trial",
+                    f"this entry was logged as trial {trial.number} already, with other content",
+                    f"log it again if it is another trial, or correct trial {trial.number}",
                     "key",
                 )
             )
@@ -129,11 +137,18 @@ def _content_hash(entry: TrialEntry) -> str:
     content = [
         sorted((name, level.strip()) for name, level in entry.levels.items()),
         sorted((name, text.strip()) for name, text in entry.readings.items() if text.strip()),
-        entry.happened_at.astimezone(UTC).isoformat() if entry.happened_at and entry.happened_at.tzinfo else None,
+        _stamp(entry.happened_at),
         entry.note.strip(),
         *([entry.run] if entry.run is not None else []),
     ]
     return hashlib.sha256(json.dumps(content, ensure_ascii=True).encode()).hexdigest()
+
+
+def _stamp(at: datetime | None) -> str | None:
+    """Write a time in UTC; one that cannot be told so is refused further on, and written as it is."""
+    if at is None or at.tzinfo is None:
+        return None
+    return at.astimezone(UTC).isoformat() if at.year >= EARLIEST_YEAR else at.isoformat()
 
 
 def _require_running(unit: StudyUnit) -> None:

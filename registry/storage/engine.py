@@ -8,7 +8,14 @@ from dataclasses import dataclass
 from typing import Any, Literal
 
 from sqlalchemy import Connection, Engine, create_engine, event, make_url
-from sqlalchemy.exc import ArgumentError, OperationalError
+from sqlalchemy.exc import (
+    ArgumentError,
+    DatabaseError,
+    DataError,
+    IntegrityError,
+    InternalError,
+    ProgrammingError,
+)
 from sqlalchemy.orm import Session
 
 from registry.errors import DatabaseNotReady, Fault, SettingMissing
@@ -51,7 +58,9 @@ class Database:
         with Session(bound, expire_on_commit=False) as session:
             try:
                 yield session
-            except OperationalError as error:
+            except DatabaseError as error:
+                if isinstance(error, IntegrityError | DataError | ProgrammingError | InternalError):
+                    raise  # These are faults of ours, to be seen whole.
                 session.rollback()
                 raise DatabaseNotReady(_trouble(error)) from error
 
@@ -112,7 +121,7 @@ def _begin_sqlite(connection: Connection) -> None:
     connection.exec_driver_sql("BEGIN" if reading else "BEGIN IMMEDIATE")
 
 
-def _trouble(error: OperationalError) -> Fault:
+def _trouble(error: DatabaseError) -> Fault:
     reason = str(error.orig).strip().splitlines()[0] if error.orig else "no reason given"
     return Fault(
         "database", reason, "check that it runs, that `weftbook upgrade` was run, and that nobody holds it locked"

@@ -87,7 +87,7 @@ def test_what_has_no_spread_of_its_own_says_why() -> None:
         "it averages over a combination without trials"
     )
     still = {cell: [texts[0]] * 3 for cell, texts in full.items()}
-    assert reason(still) == "cannot say: the readings do not vary at all"
+    assert reason(still) == "cannot say: readings within a combination do not vary at all"
 
 
 def test_with_blocks_a_term_has_no_test_of_its_own_spread() -> None:

@@ -60,7 +60,7 @@ def test_less_than_chance_would_give_is_told_as_zero_below_noise() -> None:
     ("readings", "reason"),
     [
         ({(0,): ["1"], (1,): ["2"]}, "no error estimate yet: no combination has been run twice"),
-        ({(0,): ["1", "1"], (1,): ["2", "2"]}, "cannot say: the readings do not vary at all"),
+        ({(0,): ["1", "1"], (1,): ["2", "2"]}, "cannot say: readings within a combination do not vary at all"),
     ],
 )
 def test_without_a_residual_there_is_no_share(readings: dict[tuple[int, ...], list[str]], reason: str) -> None:

@@ -12,6 +12,7 @@ from registry.services.levels import change_meaning, rename_level, series_levels
 from registry.services.opening import Database
 from registry.services.study_start import FactorDraft, ResponseDraft
 from tests.support.studies import NOW, START, WALK, Place, a_study, close_a_study, even_readings
+from tests.support.visitors import a_visitor, an_app
 
 SECONDS = ResponseDraft("minutes", "time per tour", "s", "1", "48", "lower", "measured", "primary")
 BATCH = FactorDraft("batch", "treatment", ("4", "8", "12"))
@@ -219,6 +220,15 @@ def test_only_closed_studies_of_the_series_are_compared(place: Place) -> None:
         compared(place, this, beside=999)
     with pytest.raises(NotFound, match="'weight' is not measured in a closed study of this series; choose minutes"):
         compare_studies(place.database, place.keeper, this, response="weight")
+
+
+def test_what_is_no_study_is_not_taken_for_the_one_before(place: Place) -> None:
+    this = winter(place)
+    close_a_study(place, title="Autumn", readings=crossed(WALK, START), starts=NOW - timedelta(days=90))
+    visitor = a_visitor(an_app(place.database), place.keeper.address)
+
+    assert visitor.get(f"/studies/{this}/compare?with=abc").status_code == 404
+    assert visitor.get(f"/studies/{this}/compare").status_code == 200
 
 
 def test_the_record_says_what_the_page_says(place: Place) -> None:

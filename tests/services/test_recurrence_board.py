@@ -52,7 +52,9 @@ def test_an_interaction_seen_in_three_studies_is_seen_again(place: Place) -> Non
     (line,) = found.lines
     assert line.name == ("walk × start: (return \N{MINUS SIGN} serpentine) at back less at front")
     assert (line.code, line.words) == ("seen_again", "seen again")
-    assert line.sentence == ("At least 3 of 3 studies show it, in the same direction. Every study agrees in sign.")
+    assert line.sentence == (
+        "At least 3 of 3 studies show it, in the same direction. Every estimate has the same sign."
+    )
     assert [mark.place for mark in line.marks] == [1, 2, 3]
     assert found.sentences[0] == "Of 1 interaction contrasts over 3 closed studies: 1 seen again."
     assert found.waiting == 1

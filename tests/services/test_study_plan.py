@@ -52,7 +52,7 @@ def test_a_study_closes_once_and_only_for_a_reason_that_is_true(database: Databa
     start_study(*args, now=NOW)
     place.log({"walk": "return", "start": "back"}, {"minutes": "7.1"}, key=1)
 
-    with pytest.raises(InputRefused, match="1 of 6 planned trials count; log 5 more, or close it as early"):
+    with pytest.raises(InputRefused, match="1 of 6 planned trials count; log 5 more where they are missing, or close"):
         close_study(*args, reason="size_reached", note="", now=NOW)
     with pytest.raises(InputRefused, match="note: nothing given; say it in a few words"):
         close_study(*args, reason="early", note=" ", now=NOW)
@@ -62,6 +62,39 @@ def test_a_study_closes_once_and_only_for_a_reason_that_is_true(database: Databa
     assert (card.status, card.close_reason, card.close_note) == ("closed", "early", "hall needed")
     with pytest.raises(NotNow, match="is closed"):
         withdraw_study(*args, note="x", now=NOW)
+
+
+def test_the_size_is_reached_only_when_every_combination_has_its_trials(database: Database) -> None:
+    place = a_study(database, started=False)
+    lock_plan(database, place.keeper, place.study_id, PlanDraft("2"), now=NOW)
+    start_study(database, place.keeper, place.study_id, now=NOW)
+    cells = [(walk, start) for walk in WALK.levels for start in START.levels]
+    for key, (walk, start) in enumerate([*cells, *cells[:-1], *cells[:4]]):
+        place.log({"walk": walk, "start": start}, {"minutes": "7.1"}, key=key)
+
+    with pytest.raises(
+        InputRefused, match="return, back has 1 of the 2 trials planned of each combination; log 1 more"
+    ):
+        close_study(database, place.keeper, place.study_id, reason="size_reached", note="", now=NOW)
+
+    place.log({"walk": "return", "start": "back"}, {"minutes": "7.1"}, key=99)
+    close_study(database, place.keeper, place.study_id, reason="size_reached", note="", now=NOW)
+
+
+def test_a_step_that_no_reading_could_be_kept_on_is_refused(database: Database) -> None:
+    place = a_study(database)
+    for step in ("1e-30", "1e10"):
+        response = ResponseDraft("metres", "", "m", step, "", "lower", "measured", "primary")
+        draft = StudyDraft("Next", "", "Hall", "Europe/Copenhagen", (WALK, START), (response,))
+        with pytest.raises(InputRefused, match="response metres, step: .* given; give a step from 0.000000001 to 1000"):
+            new_study(database, place.keeper, place.series_id, draft, now=NOW)
+
+
+def test_a_name_that_turns_the_direction_of_writing_is_refused(database: Database) -> None:
+    place = a_study(database)
+    draft = StudyDraft("a\u202eb", "", "Hall", "Europe/Copenhagen", (WALK, START), (MINUTES,))
+    with pytest.raises(InputRefused, match="title: .* holds a control character; give plain text on one line"):
+        new_study(database, place.keeper, place.series_id, draft, now=NOW)
 
 
 def test_a_new_study_says_everything_that_is_wrong_with_it(database: Database) -> None:

@@ -57,7 +57,9 @@ def test_a_used_key_with_other_content_is_refused(database: Database) -> None:
     place = a_study(database)
     log_trials(database, place.keeper, place.study_id, [entry(1)], now=NOW)
 
-    with pytest.raises(AlreadyThere, match="was used for trial 1 with other content; send a new trial under a new key"):
+    with pytest.raises(
+        AlreadyThere, match="this entry was logged as trial 1 already, with other content; log it again"
+    ):
         log_trials(database, place.keeper, place.study_id, [entry(1, readings={"minutes": "7.2"})], now=NOW)
 
 

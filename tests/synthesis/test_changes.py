@@ -218,7 +218,7 @@ def test_zero_spread_says_nothing_of_a_change() -> None:
 
     change = compare(first, second, margin=0.8).differences[0]
 
-    assert change.code == Undefined("cannot say: the readings do not vary at all")
+    assert change.code == Undefined("cannot say: readings within a combination do not vary at all")
     assert isinstance(change.p, Undefined)
 
 

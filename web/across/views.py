@@ -5,6 +5,7 @@ from __future__ import annotations
 from flask import Blueprint, jsonify, request
 from werkzeug.wrappers import Response
 
+from registry.errors import Fault, NotFound
 from registry.services.comparison import Comparison, compare_studies
 from registry.services.recurrence_board import RecurrenceBoard, recurrence_board
 from registry.services.study_card import study_card
@@ -54,9 +55,16 @@ def _comparison(study_id: int) -> Comparison:
         shell.database(),
         shell.person(),
         study_id,
-        beside=request.args.get("with", type=int),
+        beside=_beside(request.args.get("with", "")),
         response=request.args.get("response") or None,
     )
+
+
+def _beside(text: str) -> int | None:
+    """Read which study to set beside; what is no key is no study, and nothing asks for the one before."""
+    if text and not (text.isascii() and text.isdigit() and len(text) < 10):
+        raise NotFound(Fault("study to compare with", f"{text!r} given", "choose one from the list", "with"))
+    return int(text) if text else None
 
 
 def recurrence(series_id: int) -> Response:

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from datetime import datetime
+from dataclasses import dataclass, replace
+from datetime import UTC, datetime
 from uuid import uuid4
 from zoneinfo import ZoneInfo
 
@@ -57,6 +57,10 @@ class TrialForm:
             raise InputRefused(Fault("run", f"{text!r} given", "give the place of a run in the run order", "run"))
         return int(text)
 
+    def again(self) -> TrialForm:
+        """Keep what was typed under a fresh key, for a trial that is another one after all."""
+        return replace(self, key=str(uuid4()))
+
     def _moment(self, card: StudyCard) -> datetime | None:
         text = self.happened_at.strip()
         if not text:
@@ -67,7 +71,17 @@ class TrialForm:
             raise InputRefused(
                 Fault("time", f"{text!r} given", "write it as 2026-03-02 14:05, or leave it empty", "happened_at")
             ) from None
-        return moment if moment.tzinfo else moment.replace(tzinfo=ZoneInfo(card.time_zone))
+        return moment if moment.tzinfo else _on_the_clock(moment, ZoneInfo(card.time_zone))
+
+
+def _on_the_clock(moment: datetime, zone: ZoneInfo) -> datetime:
+    """Take a time as the clock of a site shows it; an hour that the clock skips never was."""
+    local = moment.replace(tzinfo=zone)
+    if moment.year > 1970 and local.astimezone(UTC).astimezone(zone).replace(tzinfo=None) != moment:
+        raise InputRefused(
+            Fault("time", f"{moment:%Y-%m-%d %H:%M} was skipped by the clock there", "check the hour", "happened_at")
+        )
+    return local
 
 
 def factors_to_choose(card: StudyCard) -> tuple[FactorLine, ...]:

@@ -49,7 +49,8 @@ def logged(study_id: int) -> Response:
         entry = form.entry(shown.card)
         (done,) = log_trials(shell.database(), shell.person(), study_id, [entry], now=shell.now())
     except (InputRefused, AlreadyThere) as refusal:
-        return render_page(_page(_open_sheet(study_id), form, Faults.of(refusal)), status=status_of(refusal))
+        kept = form.again() if isinstance(refusal, AlreadyThere) else form
+        return render_page(_page(_open_sheet(study_id), kept, Faults.of(refusal)), status=status_of(refusal))
     levels = ", ".join(form.levels.values())
     readings = ", ".join(f"{name} {text.strip()}" for name, text in form.readings.items() if text.strip())
     again = "" if done.created else " It had arrived before and is counted once."

@@ -8,7 +8,8 @@ from typing import get_args
 from flask import Blueprint, flash, redirect, request, url_for
 from werkzeug.wrappers import Response
 
-from registry.errors import Fault, InputRefused
+from registry.errors import Fault, InputRefused, NotAllowed
+from registry.services.study_card import study_card
 from registry.services.trial_edit import (
     correct_reading,
     restore_reading,
@@ -73,6 +74,9 @@ def corrected(study_id: int, number: int) -> Response:
 def kept(study_id: int, number: int) -> Response:
     """Set a trial or one of its readings aside, or restore it."""
     form = KeepForm.read(request.form)
+    card = study_card(shell.database(), shell.person(), study_id)
+    if not card.may("analyst"):
+        raise NotAllowed(Fault(card.title, f"a {card.role} may not do this", "ask a keeper to make you analyst"))
     try:
         _turn(study_id, number, form)
     except InputRefused as refusal:
