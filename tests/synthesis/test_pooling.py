@@ -65,7 +65,7 @@ def test_pooled_values_agree_with_the_published_sets(name: str, method: Method, 
 
 
 def _kind_whose_error_holds(interval: str, wanted: dict[str, Any]) -> str:
-    """The floor takes the larger of the other two standard errors."""
+    """Say whose standard error a prediction uses: the floor takes the larger of the other two."""
     if interval != "hartung_knapp_floored":
         return interval
     return max("normal", "hartung_knapp", key=lambda kind: float(wanted[kind]["se"]))
@@ -137,12 +137,12 @@ def test_the_vaccine_trials_agree_with_the_method_sheet_from_their_counts() -> N
     assert reml.tau_squared.lower == pytest.approx(0.1197, abs=5e-5)
     assert reml.tau_squared.upper == pytest.approx(1.1115, abs=5e-5)
     assert reml.prediction.lower == pytest.approx(-2.0084, abs=5e-5)
-    assert reml.prediction.upper == pytest.approx(0.5794, abs=1.1e-4)  # The sheet rounds .57931 up.
+    assert reml.prediction.upper == pytest.approx(0.5794, abs=1e-4)  # .57931 in the reference file.
     scattered = pooled("reml", "hartung-knapp")
     assert scattered.se == pytest.approx(0.1808, abs=5e-5)
     assert scattered.lower == pytest.approx(-1.1084, abs=5e-5)
     assert scattered.upper == pytest.approx(-0.3206, abs=5e-5)
-    assert scattered.prediction.lower == pytest.approx(-2.0090, abs=1e-4)
+    assert scattered.prediction.lower == pytest.approx(-2.0090, abs=1e-4)  # -2.00906 in the reference file.
     assert scattered.prediction.upper == pytest.approx(0.5800, abs=5e-5)
 
 

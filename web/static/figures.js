@@ -61,6 +61,8 @@ function draw(place) {
   const content = JSON.parse(document.getElementById(place.dataset.chart).textContent);
   const styles = getComputedStyle(document.documentElement);
   const layout = coloured(ownLook(content.layout, styles), styles);
+  // The library forgets the height of its place when the window changes, and the page would close up over the figure.
+  place.style.minHeight = `${layout.height}px`;
   return window.Plotly.react(place, coloured(content.data, styles), layout, {
     responsive: true,
     displayModeBar: false,
