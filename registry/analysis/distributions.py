@@ -10,12 +10,15 @@ from scipy import special
 
 Floats = npt.NDArray[np.float64]
 
-_INNER_NODES = 96
-_OUTER_NODES = 64
+# Nodes over the largest normal and over the spread; a range of many means rises more steeply and needs more.
+_FEW_MEANS = 6
+_NODES_OF_FEW = (80, 48)
+_NODES_OF_MANY = (96, 64)
 _REACH = 8.5  # Standard normal mass beyond is below 1e-16.
 _TAIL = 1e-15
 
 
+@lru_cache(maxsize=4096)
 def t_quantile(probability: float, df: float) -> float:
     """Give the quantile of Student's t."""
     return float(special.stdtrit(df, probability))
@@ -46,8 +49,9 @@ def studentized_range_upper(statistic: float, means: int, df: float) -> float:
     if means == 2:
         # The range of two is √2 |t|, so Student's distribution says it directly.
         return t_two_sided(statistic / np.sqrt(2.0), df)
-    spread, weights = _spread_nodes(df)
-    return float(np.clip(weights @ (1.0 - _range_below(statistic * spread, means)), 0.0, 1.0))
+    inner, outer = _NODES_OF_FEW if means <= _FEW_MEANS else _NODES_OF_MANY
+    spread, weights = _spread_nodes(df, outer)
+    return float(np.clip(weights @ (1.0 - _range_below(statistic * spread, means, inner)), 0.0, 1.0))
 
 
 @lru_cache(maxsize=4096)
@@ -69,10 +73,10 @@ def _legendre(nodes: int) -> tuple[Floats, Floats]:
 
 
 @lru_cache(maxsize=1024)
-def _spread_nodes(df: float) -> tuple[Floats, Floats]:
+def _spread_nodes(df: float, nodes: int) -> tuple[Floats, Floats]:
     """Nodes of s = chi / √df with weights that hold its density, over all but 1e-15 of either tail."""
     low, high = (np.sqrt(2.0 * special.gammaincinv(df / 2, tail) / df) for tail in (_TAIL, 1.0 - _TAIL))
-    places, weights = _legendre(_OUTER_NODES)
+    places, weights = _legendre(nodes)
     spread = low + (high - low) * (places + 1) / 2
     logs = (
         np.log(2.0)
@@ -85,9 +89,9 @@ def _spread_nodes(df: float) -> tuple[Floats, Floats]:
     return spread, density / density.sum()
 
 
-def _range_below(widths: Floats, means: int) -> Floats:
+def _range_below(widths: Floats, means: int, nodes: int) -> Floats:
     """Chance that the range of normals is below each width: k ∫ φ(z) [Φ(z) - Φ(z - w)]^(k-1) dz."""
-    places, weights = _legendre(_INNER_NODES)
+    places, weights = _legendre(nodes)
     largest = places * _REACH
     density = np.exp(-(largest**2) / 2) / np.sqrt(2 * np.pi) * weights * _REACH
     between = special.ndtr(largest)[None, :] - special.ndtr(largest[None, :] - widths[:, None])

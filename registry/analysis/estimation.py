@@ -63,10 +63,11 @@ class Estimator:
         scale = self.spread.scale()
         if isinstance(scale, Undefined):
             return [(scale, scale)] * len(values)
-        variances = self.division.fit.pooled_variance(rows)
+        sizes = np.sqrt(scale * self.division.fit.pooled_variance(rows)).tolist()
+        df = float(self.spread.df)
         return [
-            (value, value) if isinstance(value, Undefined) else (sqrt(scale * variance), float(self.spread.df))
-            for value, variance in zip(values, variances, strict=True)
+            (value, value) if isinstance(value, Undefined) else (size, df)
+            for value, size in zip(values, sizes, strict=True)
         ]
 
     def estimate(self, value: Number, se: Number, df: Number) -> Estimate:

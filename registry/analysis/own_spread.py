@@ -33,7 +33,7 @@ def welch_james(study: ExactStudy, rows: Floats) -> OwnSpreadTest:
     c = rows[:, used]
     v = study.variances[used] / study.n[used]
     between = (c * v) @ c.T
-    if np.linalg.matrix_rank(between) < q:
+    if (v == 0).any() and np.linalg.matrix_rank(between) < q:
         return OwnSpreadTest(NO_SPREAD, q, NO_SPREAD, NO_SPREAD)
     means = np.zeros(len(study.cells))
     means[study.filled] = study.group_means
