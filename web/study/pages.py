@@ -6,6 +6,7 @@ from dataclasses import dataclass, field
 from typing import ClassVar
 
 from registry.services.history import HistoryPage
+from registry.services.plan_outlook import PlanOutlook
 from registry.services.study_card import StudyCard
 from registry.services.study_report import StudyReport
 from registry.services.trial_pages import TrialShown
@@ -41,6 +42,7 @@ class PlanPage(Page):
     form: PlanForm = field(metadata={"help": "what was typed so far"})
     spreads: tuple[Choice, ...] = field(metadata={"help": "how the spread may be taken"})
     looks: tuple[Choice, ...] = field(metadata={"help": "how looks may be taken"})
+    outlook: PlanOutlook = field(metadata={"help": "earlier studies of the same factors, and what sizes would show"})
     faults: Faults = field(metadata={"help": "why it was not accepted, if it was sent"})
 
 

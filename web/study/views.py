@@ -9,6 +9,7 @@ from werkzeug.wrappers import Response
 
 from registry.errors import Fault, InputRefused, NotAllowed, NotNow
 from registry.services.history import study_history
+from registry.services.plan_outlook import plan_outlook
 from registry.services.study_card import StudyCard, study_card
 from registry.services.study_plan import close_study, lock_plan, start_study, withdraw_study
 from registry.services.study_report import report_record, study_report
@@ -100,7 +101,12 @@ def record(study_id: int) -> Response:
 def plan(study_id: int) -> Response:
     """Show the plan, or the form that locks it."""
     card = study_card(shell.database(), shell.person(), study_id)
-    return render_page(PlanPage(card, PlanForm.first(card), SPREADS, LOOKS, NO_FAULTS))
+    return render_page(_plan_page(card, PlanForm.first(card), NO_FAULTS))
+
+
+def _plan_page(card: StudyCard, form: PlanForm, faults: Faults) -> PlanPage:
+    outlook = plan_outlook(shell.database(), shell.person(), card.id)
+    return PlanPage(card, form, SPREADS, LOOKS, outlook, faults)
 
 
 def plan_locked(study_id: int) -> Response:
@@ -117,8 +123,7 @@ def plan_locked(study_id: int) -> Response:
             seed=secrets.randbelow(MOST_SEEDS),
         )
     except InputRefused as refusal:
-        page = PlanPage(card, form, SPREADS, LOOKS, Faults.of(refusal))
-        return render_page(page, status=status_of(refusal))
+        return render_page(_plan_page(card, form, Faults.of(refusal)), status=status_of(refusal))
     flash("The plan is locked and its run order drawn. Start the study when trials may come in.")
     return redirect(url_for("study.show", study_id=study_id), 303)
 
