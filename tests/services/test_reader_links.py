@@ -8,10 +8,9 @@ from datetime import timedelta
 from typing import Any
 
 import pytest
-from sqlalchemy import select, text, update
+from sqlalchemy import select, text
 
 from registry.errors import InputRefused, NotAllowed, NotFound, NotNow
-from registry.services.levels import rename_level, series_levels
 from registry.services.opening import Database
 from registry.services.reader_links import (
     LinkDraft,
@@ -22,10 +21,18 @@ from registry.services.reader_links import (
     series_links,
 )
 from registry.services.trial_edit import correct_reading
-from registry.services.trial_log import TrialEntry, log_trials
 from registry.services.upkeep import recount
-from registry.storage.tables import Person, ReaderLink
-from tests.support.studies import NOW, START, WALK, Place, a_study, close_a_study, even_readings, key_of
+from registry.storage.tables import ReaderLink
+from tests.support.studies import (
+    NOW,
+    START,
+    WALK,
+    Place,
+    a_study,
+    change_everything,
+    close_a_study,
+    even_readings,
+)
 from tests.support.visitors import somebody_in
 
 TOKEN = "a token nobody guesses"
@@ -49,24 +56,6 @@ def made(place: Place, *, kind: str, study: int, days: str = "", scope: str = "s
 def content(place: Place, *, token: str = TOKEN) -> str:
     page = read_link(place.database, token, draw=draw, now=NOW + timedelta(hours=2))
     return json.dumps(page.content, sort_keys=True, default=dict)
-
-
-def change_everything(place: Place) -> None:
-    """Log 1,000 more trials, correct one, rename a level, and shut the maker out."""
-    levels = [{"walk": walk, "start": start} for walk in WALK.levels for start in START.levels]
-    for hundred in range(10):
-        entries = [
-            TrialEntry(key_of(1000 + 100 * hundred + at), levels[at % 6], {"minutes": f"{at % 40 + 5}.3"}, NOW)
-            for at in range(100)
-        ]
-        log_trials(place.database, place.keeper, place.study_id, entries, now=NOW)
-    correct_reading(
-        place.database, place.keeper, place.study_id, 1, response="minutes", text="30.0", reason="misread", now=NOW
-    )
-    level = series_levels(place.database, place.keeper, place.series_id).factors[0].levels[0]
-    rename_level(place.database, place.keeper, place.series_id, level.id, name="snake", reason="said so", now=NOW)
-    with place.database.write() as session:
-        session.execute(update(Person).where(Person.id == place.keeper.id).values(shut_out_at=NOW))
 
 
 def test_a_fixed_link_stays_byte_identical_whatever_happens_later(place: Place) -> None:

@@ -8,13 +8,18 @@ from datetime import UTC, datetime, timedelta
 from itertools import product
 from uuid import UUID, uuid5
 
+from sqlalchemy import update
+
+from registry.services.levels import rename_level, series_levels
 from registry.services.opening import Database
 from registry.services.people import Person, add_person
 from registry.services.series_pages import SeriesDraft, new_series
 from registry.services.settings import PasswordCost
 from registry.services.study_plan import PlanDraft, close_study, lock_plan, start_study
 from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft, new_study
+from registry.services.trial_edit import correct_reading
 from registry.services.trial_log import TrialEntry, log_trials
+from registry.storage.tables import Person as PersonRow
 
 NOW = datetime(2026, 3, 2, 9, 0, tzinfo=UTC)
 CHEAP = PasswordCost(time=1, memory_kib=8, lanes=1)
@@ -154,3 +159,21 @@ def even_readings(
         levels: [f"{mean(levels) + (noise if turn % 2 else -noise):.{places}f}" for turn in range(per_cell)]
         for levels in product(*crossed)
     }
+
+
+def change_everything(place: Place) -> None:
+    """Log 1,000 more trials, correct one, rename a level, and shut the maker out."""
+    levels = [{"walk": walk, "start": start} for walk in WALK.levels for start in START.levels]
+    for hundred in range(10):
+        entries = [
+            TrialEntry(key_of(1000 + 100 * hundred + at), levels[at % 6], {"minutes": f"{at % 40 + 5}.3"}, NOW)
+            for at in range(100)
+        ]
+        log_trials(place.database, place.keeper, place.study_id, entries, now=NOW)
+    correct_reading(
+        place.database, place.keeper, place.study_id, 1, response="minutes", text="30.0", reason="misread", now=NOW
+    )
+    level = series_levels(place.database, place.keeper, place.series_id).factors[0].levels[0]
+    rename_level(place.database, place.keeper, place.series_id, level.id, name="snake", reason="said so", now=NOW)
+    with place.database.write() as session:
+        session.execute(update(PersonRow).where(PersonRow.id == place.keeper.id).values(shut_out_at=NOW))

@@ -10,7 +10,16 @@ import pytest
 from flask import Flask
 
 from registry.services.opening import Database
-from tests.support.studies import NOW, START, WALK, Place, a_study, close_a_study, even_readings
+from tests.support.studies import (
+    NOW,
+    START,
+    WALK,
+    Place,
+    a_study,
+    change_everything,
+    close_a_study,
+    even_readings,
+)
 from tests.support.visitors import Clock, Visitor, a_visitor, an_app, words_of
 
 TWO_STUDIES = {
@@ -92,6 +101,17 @@ def test_a_reader_page_leaks_its_address_to_nobody(app: Flask, place: Place) -> 
         assert headers["Referrer-Policy"] == "no-referrer"
         assert headers["X-Robots-Tag"] == "noindex, nofollow, noarchive"
         assert headers["Cache-Control"] == "private, no-store"
+
+
+def test_a_fixed_page_stays_byte_identical_whatever_happens_later(app: Flask, place: Place) -> None:
+    place.log({"walk": "return", "start": "back"}, {"minutes": "7.1"}, key=1)
+    paths = [link(app, place), link(app, place, study="1"), link(app, place, scope="comparison", study="3", beside="2")]
+    addresses = [*paths, *(f"{path}/record.json" for path in paths)]
+    before = [a_visitor(app).get(address).data for address in addresses]
+
+    change_everything(place)
+
+    assert [a_visitor(app).get(address).data for address in addresses] == before
 
 
 def test_a_signed_in_reader_sees_the_same_page(app: Flask, place: Place) -> None:
