@@ -147,7 +147,9 @@ def omitted_words(omitted: Omitted, names: Names) -> str:
     """Say why a contrast is not on the board."""
     name = contrast_name(omitted.corners, names)
     if omitted.crossed:
-        return f"{name}: left out, because the studies that cross it have combinations without trials, or no spread"
+        return (
+            f"{name}: left out, because the studies that cross it miss combinations, run with blocks, or vary nowhere"
+        )
     return f"{name}: left out, because no study has all four corners"
 
 
@@ -156,7 +158,10 @@ def silent_words(recurrence: Recurrence) -> str:
     if not recurrence.silent:
         return ""
     several = " and ".join(recurrence.silent)
-    return f"{several} cannot say: combinations it averages over have no trials, or the readings no spread"
+    return (
+        f"{several} cannot say: combinations it averages over have no trials, it is aliased with blocks, or the"
+        " readings show no spread"
+    )
 
 
 def silent_notes(board: Board, names: Names) -> list[str]:

@@ -24,6 +24,7 @@ WORDS: dict[ChangeCode, str] = {
 ApartCode = Literal[
     "held_in_one", "held_apart", "block_in_one", "absent_in_one", "one_level_shared", "no_level_shared", "level_in_one"
 ]
+ENDED_OTHERWISE = Undefined("one of the two did not end at its planned size, so an ordinary interval promises too much")
 _CODES: dict[str, ChangeCode] = {"act": "changed", "real": "changed", "small": "same", "unsettled": "unsettled"}
 
 
@@ -148,16 +149,11 @@ def _changes(
         silent = next((found.estimate.lower for found in (one, other) if not found.counts), None)
         change = change_between(one.estimate, other.estimate, confidence=confidence ** (1 / len(term)))
         if isinstance(silent, Undefined) or "full" not in {first.standing} & {second.standing}:
-            reason = silent if isinstance(silent, Undefined) else _ENDED_OTHERWISE
+            reason = silent if isinstance(silent, Undefined) else ENDED_OTHERWISE
             change = Estimate(change.estimate, change.se, change.df, reason, reason)
         finding = judge(change.estimate, change.lower, change.upper, margin=margin)
         code = finding.code if isinstance(finding.code, Undefined) else _CODES[finding.code]
         yield Change(corners, one.estimate, other.estimate, change, _p(change), code, ground.caveats)
-
-
-_ENDED_OTHERWISE = Undefined(
-    "one of the two did not end at its planned size, so an ordinary interval promises too much"
-)
 
 
 def change_between(first: Estimate, second: Estimate, *, confidence: float = 0.95) -> Estimate:
