@@ -50,7 +50,7 @@ def studentized_range_upper(statistic: float, means: int, df: float) -> float:
         # The range of two is √2 |t|, so Student's distribution says it directly.
         return t_two_sided(statistic / np.sqrt(2.0), df)
     inner, outer = _NODES_OF_FEW if means <= _FEW_MEANS else _NODES_OF_MANY
-    spread, weights = _spread_nodes(df, outer)
+    spread, weights = spread_nodes(df, outer)
     return float(np.clip(weights @ (1.0 - _range_below(statistic * spread, means, inner)), 0.0, 1.0))
 
 
@@ -67,16 +67,17 @@ def studentized_range_quantile(probability: float, means: int, df: float) -> flo
 
 
 @lru_cache(maxsize=64)
-def _legendre(nodes: int) -> tuple[Floats, Floats]:
+def legendre(nodes: int) -> tuple[Floats, Floats]:
+    """Give places in [-1, 1] and weights of Gauss-Legendre quadrature."""
     places, weights = np.polynomial.legendre.leggauss(nodes)
     return places, weights
 
 
 @lru_cache(maxsize=1024)
-def _spread_nodes(df: float, nodes: int) -> tuple[Floats, Floats]:
+def spread_nodes(df: float, nodes: int) -> tuple[Floats, Floats]:
     """Nodes of s = chi / √df with weights that hold its density, over all but 1e-15 of either tail."""
     low, high = (np.sqrt(2.0 * special.gammaincinv(df / 2, tail) / df) for tail in (_TAIL, 1.0 - _TAIL))
-    places, weights = _legendre(nodes)
+    places, weights = legendre(nodes)
     spread = low + (high - low) * (places + 1) / 2
     logs = (
         np.log(2.0)
@@ -91,7 +92,7 @@ def _spread_nodes(df: float, nodes: int) -> tuple[Floats, Floats]:
 
 def _range_below(widths: Floats, means: int, nodes: int) -> Floats:
     """Chance that the range of normals is below each width: k ∫ φ(z) [Φ(z) - Φ(z - w)]^(k-1) dz."""
-    places, weights = _legendre(nodes)
+    places, weights = legendre(nodes)
     largest = places * _REACH
     density = np.exp(-(largest**2) / 2) / np.sqrt(2 * np.pi) * weights * _REACH
     between = special.ndtr(largest)[None, :] - special.ndtr(largest[None, :] - widths[:, None])

@@ -7,6 +7,8 @@ from collections.abc import Iterator
 from registry.analysis.findings import Finding, judge_difference, judge_interaction
 from registry.analysis.results import Comparison, Decomposition, InteractionContrast
 from registry.analysis.undefined import Number, Undefined
+from registry.services.amounts import amount, unit_words
+from registry.services.best_combination import BestCombination
 from registry.services.study_card import ResponseLine, StudyCard
 
 MOST_SAID = 3
@@ -41,23 +43,28 @@ def why_not_judged(card: StudyCard) -> str:
     return ""
 
 
-def sentences_of(card: StudyCard, response: ResponseLine, result: Decomposition) -> Iterator[str]:
+def sentences_of(
+    card: StudyCard, response: ResponseLine, result: Decomposition, *, best: BestCombination
+) -> Iterator[str]:
     """Say what a study found in one response, the plainest first."""
     yield _size(card, response, result)
     mean = result.equal_weight
     if not isinstance(mean.estimate, Undefined):
-        spoken = f"{_amount(mean.estimate, response)} {_unit(response)}"
+        spoken = f"{amount(mean.estimate, response)} {unit_words(response)}"
         yield f"The grand mean is {spoken}{_range(mean.lower, mean.upper, response)}."
     if not may_judge(card):
         reason = why_not_judged(card)
         if reason:
             yield reason
         return
+    yield from best.sentences
     yield from _findings(response, result)
 
 
-def headline_of(card: StudyCard, response: ResponseLine, result: Decomposition) -> str:
-    """Say in one sentence what a study found: its largest finding, or that there is none, and why."""
+def headline_of(card: StudyCard, response: ResponseLine, result: Decomposition, *, best: BestCombination) -> str:
+    """Say in one sentence what a study found: the best combination, its largest finding, or why there is none."""
+    if may_judge(card) and best.sentences:
+        return best.sentences[0]
     if may_judge(card):
         return next(_findings(response, result), "It crossed one level alone, so there is nothing to compare.")
     if card.status != "closed":
@@ -132,7 +139,7 @@ def _difference(finding: Finding, pair: Comparison, response: ResponseLine) -> s
     verb = "takes" if response.unit in TIMES else "reads"
     more = "more" if value > 0 else "less"
     return (
-        f"{pair.factor} {pair.to_level} {verb} {_amount(abs(value), response)} {_unit(response)} {more} than"
+        f"{pair.factor} {pair.to_level} {verb} {amount(abs(value), response)} {unit_words(response)} {more} than"
         f" {pair.from_level}{_range(finding.lower, finding.upper, response, turned=value < 0)}"
     )
 
@@ -144,7 +151,7 @@ def _interaction(finding: Finding, each: InteractionContrast, response: Response
     change = "rises" if value > 0 else "falls"
     return (
         f"From {other} {before} to {after}, what {one} {high} reads over {low} {change} by"
-        f" {_amount(abs(value), response)} {_unit(response)}"
+        f" {amount(abs(value), response)} {unit_words(response)}"
         f"{_range(finding.lower, finding.upper, response, turned=value < 0)}"
     )
 
@@ -158,19 +165,4 @@ def _range(lower: Number, upper: Number, response: ResponseLine, *, turned: bool
         return ""
     if turned:
         lower, upper = -upper, -lower
-    return f" ({_amount(lower, response)} to {_amount(upper, response)})"
-
-
-def _amount(value: float, response: ResponseLine) -> str:
-    """Write a number to one digit more than the response's step, with a true minus sign."""
-    return f"{value:.{places_of(response)}f}".replace("-", "\N{MINUS SIGN}")
-
-
-def places_of(response: ResponseLine) -> int:
-    """Say to how many digits behind the point numbers of a response are shown: one more than its step."""
-    _, _, digits = response.step.partition(".")
-    return min(len(digits) + 1, 12)
-
-
-def _unit(response: ResponseLine) -> str:
-    return "of 1" if response.kind == "yes_no" else response.unit
+    return f" ({amount(lower, response)} to {amount(upper, response)})"

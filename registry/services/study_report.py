@@ -10,11 +10,13 @@ from registry.analysis.findings import Finding, judge_difference, judge_interact
 from registry.analysis.results import Decomposition, ErrorPolicy, SumOfSquares, TermResult
 from registry.analysis.undefined import Number, Undefined
 from registry.errors import Fault, NotFound
+from registry.services.amounts import places_of
+from registry.services.best_combination import BestCombination, best_combination
 from registry.services.build_up import BuildUp, build_up
 from registry.services.decomposition_record import as_record
 from registry.services.figures import Figure, Interval, figure, interval
 from registry.services.people import Person
-from registry.services.sentences import headline_of, may_judge, places_of, sentences_of, why_not_judged
+from registry.services.sentences import headline_of, may_judge, sentences_of, why_not_judged
 from registry.services.study_card import ResponseLine, StudyCard, open_study_card
 from registry.services.tallied import policy_of, tallied_study
 from registry.storage.engine import Database
@@ -89,6 +91,7 @@ class Findings:
     cells: tuple[CellLine, ...]
     as_logged: Interval
     notes: tuple[str, ...]
+    best: BestCombination
     record: dict[str, Any]
 
 
@@ -137,15 +140,16 @@ def report_of(
         said = (f"No reading of {chosen.name} counts yet.",)
         return StudyReport(card, line, places_of(line), said, said[0], judged, why_not_judged(card), None)
     result = decompose(tallied, error=policy_of(card.spread, blocked=card.block is not None))
+    best = best_combination(line, result)
     return StudyReport(
         card=card,
         response=line,
         places=places_of(line),
-        sentences=tuple(sentences_of(card, line, result)),
-        headline=headline_of(card, line, result),
+        sentences=tuple(sentences_of(card, line, result, best=best)),
+        headline=headline_of(card, line, result, best=best),
         judged=judged,
         why_not_judged=why_not_judged(card),
-        findings=_findings(card, line, result, row=row, column=column, judged=judged),
+        findings=_findings(card, line, result, best, row=row, column=column, judged=judged),
     )
 
 
@@ -160,7 +164,14 @@ def _chosen(frame: StudyFrame, name: str | None) -> FrameResponse:
 
 
 def _findings(
-    card: StudyCard, line: ResponseLine, result: Decomposition, *, row: str | None, column: str | None, judged: bool
+    card: StudyCard,
+    line: ResponseLine,
+    result: Decomposition,
+    best: BestCombination,
+    *,
+    row: str | None,
+    column: str | None,
+    judged: bool,
 ) -> Findings:
     margin = float(line.margin) if line.margin else None
     differences = tuple(
@@ -210,6 +221,7 @@ def _findings(
         ),
         as_logged=interval(result.as_logged),
         notes=result.notes,
+        best=best,
         record=as_record(result, response=line.name, step=line.step),
     )
 
@@ -269,6 +281,8 @@ def report_record(report: StudyReport) -> dict[str, Any]:
     record["sentences"] = list(report.sentences)
     record["headline"] = report.headline
     if report.findings:
+        if report.judged:
+            record["best"] = [asdict(line) for line in report.findings.best.contenders]
         record["differences"] = [asdict(line) for line in report.findings.differences]
         record["changes"] = [asdict(line) for line in report.findings.changes]
     return record

@@ -93,9 +93,12 @@ def test_a_study_closed_at_its_planned_size_speaks_in_findings(database: Databas
 
     assert report.judged
     assert report.sentences[0] == "18 of 18 planned trials are logged; 18 readings of minutes count."
-    assert (
-        report.sentences[2]
-        == "walk return takes 1.97 min more than serpentine (1.72 to 2.22), averaged over start: worth acting on."
+    assert report.sentences[2].startswith(
+        "The best seen of 6 combinations is serpentine, front; 3 others cannot be ruled"
+    )
+    assert report.headline == report.sentences[2]
+    assert report.sentences[3] == (
+        "walk return takes 1.97 min more than serpentine (1.72 to 2.22), averaged over start: worth acting on."
     )
     assert report.findings is not None
     assert {line.code for line in report.findings.differences} == {"act", "small"}
