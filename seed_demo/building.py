@@ -5,12 +5,13 @@ from __future__ import annotations
 import csv
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
-from datetime import UTC, datetime, time, timedelta
+from datetime import UTC, date, datetime, time, timedelta
 from io import StringIO
 from random import Random
 from uuid import UUID
 
 from registry.services.access import Role
+from registry.services.decisions import DecisionDraft, decide, say_whether_it_held
 from registry.services.import_check import ColumnChoice
 from registry.services.levels import rename_level, series_levels
 from registry.services.opening import Database
@@ -23,7 +24,7 @@ from registry.services.study_start import FactorDraft, ResponseDraft, StudyDraft
 from registry.services.trial_edit import set_aside_trial
 from registry.services.trial_import import read_upload, run_import
 from registry.services.trial_log import MOST_AT_ONCE, TrialEntry, log_trials
-from seed_demo.scenario import MARGIN, RENAMED, SHIFT, STUDIES, Levels, PlannedStudy
+from seed_demo.scenario import MARGIN, RENAMED, SHIFT, STUDIES, Decided, Levels, PlannedStudy
 
 SEED = 20241016
 ZONE = "Europe/Copenhagen"
@@ -128,6 +129,19 @@ def _build_study(
             note=planned.close_note,
             now=last + timedelta(days=1),
         )
+        if planned.decision:
+            _decide(database, people, study_id, planned.decision, now=last + timedelta(days=3))
+
+
+def _decide(database: Database, people: DemoPeople, study_id: int, decided: Decided, *, now: datetime) -> None:
+    """Set down what the depot decided, and later whether it held."""
+    draft = DecisionDraft(decided.what, decided.from_day, decided.saving, decided.saving_unit, decided.review_day)
+    number = decide(database, people.analyst, study_id, draft, now=now)
+    if decided.held:
+        say_whether_it_held(
+            database, people.analyst, study_id, number, held=decided.held, note=decided.held_note,
+            now=datetime.combine(date.fromisoformat(decided.review_day), time(9, 0), UTC),
+        )  # fmt: skip
 
 
 def _run_in_order(

@@ -79,23 +79,19 @@ def _sentence(row: EventRow) -> str:
             return f"Trials {content.get('first')} to {content.get('last')} imported"
         case "reading_corrected" | "reading_set_aside" | "reading_restored":
             return f"{trial}: {response} {_of_reading(row)}"
-        case "step_changed":
-            return f"Step of {response} changed from {row.before} to {row.after}"
         case "plan_locked":
             plan = json.loads(row.after or "{}")
             return f"Plan locked: {plan.get('per_cell')} trials a combination, {plan.get('planned')} in all"
         case "run_order_drawn":
             order = json.loads(row.after or "{}")
             return f"Run order of {order.get('runs')} runs drawn from seed {order.get('seed')}"
-        case "run_skipped":
-            return f"Run {row.after} skipped"
         case "level_renamed":
             before, after = json.loads(row.before or "{}"), json.loads(row.after or "{}")
             return f"{before.get('factor')}: {before.get('level')} is called {after.get('level')} from now on"
         case "study_closed":
             return f"Study closed: {(row.after or '').replace('_', ' ')}"
         case _:
-            return _PLAIN[row.what].format(trial=trial)
+            return _PLAIN[row.what].format(trial=trial, response=response, before=row.before, after=row.after)
 
 
 def _of_reading(row: EventRow) -> str:
@@ -116,4 +112,8 @@ _PLAIN = {
     "study_withdrawn": "Study withdrawn",
     "trial_set_aside": "{trial} set aside",
     "trial_restored": "{trial} restored",
+    "step_changed": "Step of {response} changed from {before} to {after}",
+    "run_skipped": "Run {after} skipped",
+    "decision_made": "Decision {after} set down",
+    "decision_reviewed": "Decision {before} looked at again: {after}",
 }

@@ -19,6 +19,7 @@ import pytest
 from flask import Flask
 
 from registry.services.access import ROLES
+from registry.services.decisions import DecisionDraft, decide
 from registry.services.levels import series_levels
 from registry.services.opening import Database, open_registry
 from registry.services.reader_links import LinkDraft, make_link
@@ -86,6 +87,9 @@ across.compare          GET  /studies/{closed}/compare           303 404      20
 across.compare_record   GET  /studies/{closed}/compare/record.json 303 404    200    200    200     200    200
 across.recurrence       GET  /series/{series}/recurrence         303 404      200    200    200     200    200
 across.recurrence_record GET /series/{series}/recurrence/record.json 303 404  200    200    200     200    200
+decisions.every         GET  /studies/{closed}/decisions         303 404      200    200    200     200    200
+decisions.decided       POST /studies/{closed}/decisions         401 404      403    403    303     303    303
+decisions.looked_at     POST /studies/{closed}/decisions/1/held  401 404      403    403    303     303    303
 levels.every            GET  /series/{series}/levels             303 404      200    200    200     200    200
 levels.rename           GET  /series/{series}/levels/{level}/name 303 404     403    403    200     200    200
 levels.renamed          POST /series/{series}/levels/{level}/name 401 404     403    403    303     303    303
@@ -135,6 +139,8 @@ FORMS: Mapping[str, Mapping[str, str | bytes]] = {
     "imports.decided": {"drop": "yes"},
     "levels.renamed": {"name": "there and back", "reason": "that is what the crews say"},
     "levels.meaning_changed": {"name": "return by the new lift", "definition": "back along the lift"},
+    "decisions.decided": {"what": "largest gap from the back end", "review_day": "2026-06-02"},
+    "decisions.looked_at": {"held": "yes", "note": "it saved what it should"},
     "links.new_try": {"scope": "study", "study": "1", "kind": "live", "days": "30"},
 }
 
@@ -182,6 +188,7 @@ def _fill(database: Database) -> World:
         somebody_in(database, place.keeper, place.series_id, role=role, address=ADDRESS_OF[role])
     readings = even_readings((WALK.levels, START.levels), lambda _: 20.0)
     closed = [close_a_study(place, title=title, readings=readings) for title in ("Winter", "Spring")]
+    decide(database, place.keeper, closed[1], DecisionDraft("largest gap", "", "", "", ""), now=NOW)
     level = series_levels(database, place.keeper, place.series_id).factors[0].levels[0].id
     draft = LinkDraft("study", closed[0], None, None, "fixed", "")
     link = make_link(

@@ -16,7 +16,7 @@ PAGES = (
     "/studies/1/history", "/studies/1/trials", "/studies/1/trials?which=set_aside", "/studies/1/trials/17",
     "/studies/8/log", "/studies/8/import", "/studies/1?rows=start&columns=walk", "/studies/4?response=wrong+pick",
     "/studies/6/compare", "/studies/6/compare?with=3", "/series/1/recurrence", "/series/1/levels",
-    "/series/1/levels/3/name", "/series/1/levels/3/meaning", "/series/1/links",
+    "/studies/1/decisions", "/series/1/levels/3/name", "/series/1/levels/3/meaning", "/series/1/links",
     "/series/1/links/new?scope=study&study=6",
 )  # fmt: skip
 
