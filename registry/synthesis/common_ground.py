@@ -6,6 +6,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
+
 from registry.synthesis.contributions import Contribution, Identity
 
 Corners = Mapping[Identity, tuple[Identity, Identity]]
@@ -93,3 +95,16 @@ def has_corners(study: Contribution, corners: Corners) -> bool:
     """Whether a study crosses every level that a contrast is made of."""
     crossed = {part.factor: part.levels for part in study.crossed}
     return all(factor in crossed and set(levels) <= set(crossed[factor]) for factor, levels in corners.items())
+
+
+def ran_corners(study: Contribution, corners: Corners) -> bool:
+    """Whether a study that crosses a contrast's levels has a trial at every combination of them."""
+    counts = study.estimator.exact.n.reshape([len(part.levels) for part in study.crossed])
+    places = [
+        [part.levels.index(level) for level in corners[part.factor]]
+        if part.factor in corners
+        else range(len(part.levels))
+        for part in study.crossed
+    ]
+    others = tuple(at for at, part in enumerate(study.crossed) if part.factor not in corners)
+    return bool((counts[np.ix_(*places)].sum(axis=others) > 0).all())

@@ -8,7 +8,14 @@ from itertools import combinations
 from typing import Literal
 
 from registry.analysis.undefined import Undefined
-from registry.synthesis.common_ground import Caveat, Ground, factors_in_order, ground_beside, has_corners
+from registry.synthesis.common_ground import (
+    Caveat,
+    Ground,
+    factors_in_order,
+    ground_beside,
+    has_corners,
+    ran_corners,
+)
 from registry.synthesis.contributions import Contribution, Evidence, Identity, coefficients, evidence
 from registry.synthesis.partial_conjunction import at_least, count_shown, discovery_adjusted
 from registry.synthesis.pooling import Pooled, pool
@@ -103,8 +110,10 @@ def board(studies: Sequence[Contribution], *, margin: float, fdr: float = 0.05) 
     omitted: list[Omitted] = []
     for corners in every_square(studies):
         crossing = [study for study in studies if has_corners(study, corners)]
-        ground = ground_beside(crossing, list(corners))
-        each = tuple(_shown(crossing, corners, ground, margin))
+        # A study that never ran a corner cannot speak, and must not narrow the ground of those that can.
+        holding = [study for study in crossing if ran_corners(study, corners)]
+        ground = ground_beside(holding, list(corners))
+        each = tuple(_shown(holding, corners, ground, margin))
         if each:
             heard = {shown.study for shown in each}
             silent = tuple(study.title for study in crossing if study.key not in heard)

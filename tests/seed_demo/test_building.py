@@ -7,11 +7,12 @@ from datetime import UTC, datetime
 import pytest
 
 from registry.services.opening import Database
+from registry.services.recurrence_board import recurrence_board
 from registry.services.series_pages import home
 from registry.services.study_report import report_record, study_report
 from registry.services.upkeep import recount
 from seed_demo.building import build_demo
-from seed_demo.scenario import STUDIES
+from seed_demo.scenario import PLANTED, RENAMED, STUDIES
 from tests.support.studies import CHEAP, PASSWORD
 
 NOW = datetime(2026, 12, 1, tzinfo=UTC)
@@ -31,6 +32,24 @@ def test_the_same_seed_builds_the_same_trials_and_nothing_is_wrong(database: Dat
     ]
     assert reports[0::2] == reports[1::2]
     assert recount(database).faults == ()
+
+
+def test_the_board_of_the_demo_shows_what_was_planted(sqlite: Database) -> None:
+    people = build_demo(sqlite, now=NOW, password=PASSWORD, hashing=CHEAP)
+
+    board = recurrence_board(sqlite, people.keeper, home(sqlite, people.keeper).series[0].id)
+
+    old, new = RENAMED
+    verdicts = {
+        (
+            tuple(each["factors"]),
+            tuple(tuple(old if level == new else level for level in pair) for pair in each["levels"]),
+        ): (each["verdict"])
+        for each in board.record["interactions"]
+    }
+    assert {planted: verdicts[planted.factors, planted.levels] for planted in PLANTED} == {
+        planted: planted.verdict for planted in PLANTED
+    }
 
 
 @pytest.mark.parametrize("place", [0, 1, 2, 5])

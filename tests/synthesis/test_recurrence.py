@@ -8,7 +8,7 @@ from scipy import stats
 from registry.analysis.undefined import Undefined
 from registry.synthesis.contributions import Contribution
 from registry.synthesis.recurrence import Recurrence, board
-from tests.support.series import Trial, contribution, readings_of
+from tests.support.series import Trial, contribution, mean_of, readings_of
 
 CROSSED = {"walk": ("a", "b"), "start": ("front", "back")}
 MARGIN = 0.8
@@ -143,6 +143,28 @@ def test_a_study_with_an_empty_corner_is_named_and_does_not_count() -> None:
     found = only(studies)
 
     assert ([shown.study for shown in found.each], found.silent, found.verdict) == (["full"], ("holed",), "single")
+
+
+def test_a_study_that_never_ran_a_corner_does_not_narrow_the_ground_of_the_others() -> None:
+    wide = {**CROSSED, "batch": ("4", "8")}
+    holed = [(at, steps) for at, steps in readings_of(CROSSED, seed=6) if at != {"walk": "b", "start": "back"}]
+    trials = readings_of(wide, seed=5)
+    studies = [
+        contribution("wide", trials, wide),
+        contribution("holed", holed, CROSSED, held={"batch": "8"}),
+    ]
+
+    found = next(each for each in board(studies, margin=MARGIN).recurrences if set(each.corners) == set(CROSSED))
+
+    (shown,) = found.each
+    corners = {
+        (walk, start): sum(mean_of(trials, walk=walk, start=start, batch=batch) for batch in wide["batch"]) / 20
+        for walk in wide["walk"]
+        for start in wide["start"]
+    }
+    expected = corners["b", "back"] - corners["a", "back"] - corners["b", "front"] + corners["a", "front"]
+    assert shown.evidence.estimate.estimate == pytest.approx(expected, rel=1e-9)
+    assert (found.silent, found.caveats) == (("holed",), ())
 
 
 @pytest.mark.parametrize(("standing", "judged"), [("early", False), ("extended", False), ("exploratory", False)])
