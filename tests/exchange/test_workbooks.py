@@ -134,6 +134,12 @@ def test_empty_cells_and_rows_keep_their_places() -> None:
     ]  # fmt: skip
 
 
+def test_a_table_that_begins_further_in_keeps_the_rows_and_columns_of_its_sheet() -> None:
+    rows: list[list[object]] = [[], [], [None, "walk"], [None, "return"]]
+
+    assert list(first_sheet("tours.xlsx", workbook(rows))) == [("", ""), ("", ""), ("", "walk"), ("", "return")]
+
+
 def test_the_first_sheet_is_the_leftmost_one_whatever_was_looked_at_last() -> None:
     book = Workbook()
     book.active.append(["left"])
