@@ -154,7 +154,7 @@ def _count_rows(path: Path, columns: Columns) -> Counter[tuple[str, ...]]:
     counts: Counter[tuple[str, ...]] = Counter()
     try:
         rows = _rows(path)
-        heads = next(rows, None)
+        heads = next((row for row in rows if any(value.strip() for value in row)), None)
         if heads is None:
             raise InputRefused(Fault(path.name, "there is nothing in it", "give a table with a row of heads"))
         wanted = itemgetter(*_places(path, heads, columns))
@@ -239,7 +239,7 @@ def _lined(path: Path) -> Iterator[tuple[int, Sequence[str]]]:
 
 def _where(path: Path, columns: Columns, key: tuple[str, ...], place: int) -> str:
     """Name the line and column in which a combination first stands."""
-    rows = _lined(path)
+    rows = (found for found in _lined(path) if any(value.strip() for value in found[1]))
     _, heads = next(rows)
     wanted = itemgetter(*_places(path, heads, columns))
     line = next(line for line, row in rows if len(row) == len(heads) and wanted(row) == key)
@@ -298,7 +298,8 @@ def _tally(
         steps = known.get(text)
         if steps is None:
             if not text.strip():
-                left_out += times
+                # A row that says nothing at all in these columns is a blank one, and none was left out.
+                left_out += times if any(value.strip() for value in key) else 0
                 continue
             steps = known[text] = _steps(path, columns, key, read, step)
         if anchor is None:

@@ -12,7 +12,7 @@ from registry.services.access import Role, require_series
 from registry.services.people import Person
 from registry.services.text_check import checked_name, checked_text
 from registry.storage.engine import Database
-from registry.storage.history import Happening, append_events, append_registry_event
+from registry.storage.history import Happening, append_events, append_registry_event, lock_registry
 from registry.storage.levels import (
     add_successor,
     aliases_of,
@@ -97,6 +97,7 @@ def rename_level(
     if faults:
         raise InputRefused(faults)
     with database.write() as session:
+        lock_registry(session)
         level, factor = _found(session, person, series_id, level_id)
         holder = holder_of_name(session, level.factor_id, new_name)
         if level.name == new_name or (holder is not None and holder.id != level.id):
@@ -127,6 +128,7 @@ def change_meaning(
     if faults:
         raise InputRefused(faults)
     with database.write() as session:
+        lock_registry(session)
         level, factor = _found(session, person, series_id, level_id)
         holder = holder_of_name(session, level.factor_id, new_name)
         if holder is not None:

@@ -11,7 +11,7 @@ from registry.services.access import ROLES, Role, covers, require_series
 from registry.services.people import Person
 from registry.services.text_check import checked_name, checked_text
 from registry.storage.engine import Database
-from registry.storage.history import append_registry_event
+from registry.storage.history import append_registry_event, lock_registry
 from registry.storage.pinned import latest_headlines
 from registry.storage.studies import (
     TrialCount,
@@ -171,6 +171,7 @@ def new_series(database: Database, person: Person, draft: SeriesDraft, *, now: d
     if faults:
         raise InputRefused(faults)
     with database.write() as session:
+        lock_registry(session)  # Nobody else may take the name between the look and the writing.
         if series_named(session, name) is not None:
             raise AlreadyThere(
                 Fault(

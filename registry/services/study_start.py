@@ -16,7 +16,7 @@ from registry.services.access import require_series
 from registry.services.people import Person
 from registry.services.text_check import checked_margin, checked_name, checked_text
 from registry.storage.engine import Database
-from registry.storage.history import Happening, append_events
+from registry.storage.history import Happening, append_events, lock_registry
 from registry.storage.studies import (
     cross_cells,
     factor_named,
@@ -94,6 +94,7 @@ def new_study(database: Database, person: Person, series_id: int, draft: StudyDr
     """
     checked, factors, responses = _checked(draft)
     with database.write() as session:
+        lock_registry(session)  # Two studies may bring the same new factor, level or response at once.
         require_series(session, person, series_id, at_least="analyst")
         _refuse_changed_meaning(session, series_id, responses)
         row = new_study_row(
@@ -224,11 +225,13 @@ def _refuse_changed_meaning(session: Any, series_id: int, responses: Sequence[_C
             ("kind", response.draft.kind, known.kind),
             ("dimension", response.dimension, known.dimension),
             ("wanted", response.draft.wanted, known.wanted),
+            ("part", response.draft.part, known.part),
+            ("about", response.draft.about or known.about, known.about or response.draft.about),
         ):
             if given != before:
                 faults.append(
                     Fault(
-                        f"response {known.name}, {what}",
+                        f"response {known.name}, {'what it is' if what == 'about' else what}",
                         f"{given.replace('_', ' / ')} given",
                         f"this series records it as {before.replace('_', ' / ')}; keep that, or choose another name",
                         f"responses-{place}-{'unit' if what == 'dimension' else what}",

@@ -76,6 +76,8 @@ class Imported:
 
 def read_upload(database: Database, person: Person, study_id: int, *, name: str, content: bytes, now: datetime) -> int:
     """Keep a file for import, once it can be read as a table; returns the number of its job."""
+    with database.read() as session:
+        require_study(session, person, study_id, at_least="analyst")  # A stranger's file is not even opened.
     read_uploaded(name or "file", content)
     with write_study(database, study_id, person_id=person.id, now=now) as unit:
         require_study(unit.session, person, unit.study, at_least="analyst")

@@ -96,13 +96,17 @@ def keep_texts(session: Session, study_id: int, bodies: Sequence[str]) -> list[F
     return texts
 
 
+def lock_registry(session: Session) -> None:
+    """Let one writer at a time name what the whole registry, or a series, shares; SQLite has one writer anyway."""
+    if session.get_bind().dialect.name == "postgresql":
+        session.execute(select(func.pg_advisory_xact_lock(0x57454654)))
+
+
 def append_registry_event(
     session: Session, what: str, *, person_id: int, before: str | None = None, after: str | None = None, now: datetime
 ) -> None:
     """Add an event to the registry's own chain."""
-    # Two writers on PostgreSQL must not both build on the same last link.
-    if session.get_bind().dialect.name == "postgresql":
-        session.execute(select(func.pg_advisory_xact_lock(0x57454654)))
+    lock_registry(session)  # Two writers must not both build on the same last link.
     last = session.execute(
         select(RegistryEvent.number, RegistryEvent.hash).order_by(RegistryEvent.number.desc()).limit(1)
     ).first()

@@ -208,3 +208,29 @@ def test_dates_of_a_workbook_are_the_sites_own_clock_and_faults_name_its_rows(da
     assert [fault.where for fault in refusal.value.faults] == [
         "line 3, column minutes", "line 4, column walk", "line 4, column minutes",
     ]  # fmt: skip
+
+
+def test_a_value_in_the_farthest_corner_is_refused_before_the_sheet_is_opened() -> None:
+    book = Workbook()
+    sheet = book.active
+    assert sheet is not None
+    sheet["A1"], sheet["XFD1048576"] = "walk", 1
+    content = BytesIO()
+    book.save(content)
+
+    with pytest.raises(InputRefused, match="a sheet reaches to column 16384 and row 1048576; clear what lies far from"):
+        list(first_sheet("far.xlsx", content.getvalue()))
+
+
+def test_blank_rows_are_not_rows_wherever_they_stand(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    rows: list[list[object]] = [[None, None], ["walk", "minutes"], ["a", 1], [None, None], ["b", 2], ["a", 2], ["b", 4]]
+    book, table = tmp_path / "tours.xlsx", tmp_path / "tours.csv"
+    book.write_bytes(workbook(rows))
+    table.write_text("\n".join(",".join("" if value is None else str(value) for value in row) for row in rows) + "\n")
+    records = []
+    for path in (book, table):
+        assert main(["decompose", str(path), "--response", "minutes", "--factor", "walk", "--json"]) == 0
+        records.append(json.loads(capsys.readouterr().out))
+
+    assert records[0] == records[1]
+    assert not any("left out" in note for note in records[0]["notes"])

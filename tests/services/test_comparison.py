@@ -14,7 +14,7 @@ from registry.services.study_start import FactorDraft, ResponseDraft
 from tests.support.studies import NOW, START, WALK, Place, a_study, close_a_study, even_readings
 from tests.support.visitors import a_visitor, an_app
 
-SECONDS = ResponseDraft("minutes", "time per tour", "s", "1", "48", "lower", "measured", "primary")
+SECONDS = ResponseDraft("minutes", "minutes per tour", "s", "1", "48", "lower", "measured", "primary")
 BATCH = FactorDraft("batch", "treatment", ("4", "8", "12"))
 EFFECT = {
     "serpentine": 1.0,

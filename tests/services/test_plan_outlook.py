@@ -21,7 +21,7 @@ from tests.support.studies import (
     even_readings,
 )
 
-SECONDS = ResponseDraft("minutes", "time per tour", "s", "1", "48", "lower", "measured", "primary")
+SECONDS = ResponseDraft("minutes", "minutes per tour", "s", "1", "48", "lower", "measured", "primary")
 NO_MARGIN = ResponseDraft("minutes", "minutes per tour", "min", "0.1", "", "lower", "measured", "primary")
 EVEN = even_readings((WALK.levels, START.levels), lambda _: 20.0, per_cell=6, noise=0.4)
 

@@ -90,6 +90,20 @@ def test_a_step_that_no_reading_could_be_kept_on_is_refused(database: Database) 
             new_study(database, place.keeper, place.series_id, draft, now=NOW)
 
 
+@pytest.mark.parametrize(("part", "about", "told"), [
+    ("guard", "minutes per tour", "part: guard given; this series records it as primary; keep that, or choose another"),
+    ("primary", "minutes per line", "what it is: minutes per line given; this series records it as minutes per tour"),
+])  # fmt: skip
+def test_a_response_keeps_the_part_and_the_meaning_its_series_gave_it(
+    database: Database, part: str, about: str, told: str
+) -> None:
+    place = a_study(database)
+    response = ResponseDraft("minutes", about, "min", "0.1", "0.8", "lower", "measured", part)
+    draft = StudyDraft("Next", "", "Hall", "Europe/Copenhagen", (WALK, START), (response,))
+    with pytest.raises(InputRefused, match=told):
+        new_study(database, place.keeper, place.series_id, draft, now=NOW)
+
+
 def test_a_name_that_turns_the_direction_of_writing_is_refused(database: Database) -> None:
     place = a_study(database)
     draft = StudyDraft("a\u202eb", "", "Hall", "Europe/Copenhagen", (WALK, START), (MINUTES,))
