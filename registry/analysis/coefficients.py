@@ -109,9 +109,8 @@ def pair_rows(rows: Whole) -> tuple[Whole, list[tuple[int, int]]]:
     return np.array([rows[second] - rows[first] for first, second in pairs]), pairs
 
 
-def interaction_rows(
-    layout: Layout, pair: tuple[int, int]
-) -> tuple[Whole, list[tuple[tuple[int, int], tuple[int, int]]]]:
+@remembered
+def interaction_rows(layout: Layout, pair: Term) -> tuple[Whole, list[tuple[tuple[int, int], tuple[int, int]]]]:
     """Coefficients of every 2 × 2 interaction contrast of two factors, and the levels that are its corners.
 
     A difference of differences: later minus earlier level of the first factor, at the

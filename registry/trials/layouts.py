@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from itertools import product
 
 from registry.trials.factors import Factor
@@ -18,12 +19,12 @@ class Layout:
     factors: tuple[Factor, ...]
     block: Factor | None = None
 
-    @property
+    @cached_property
     def shape(self) -> tuple[int, ...]:
         """How many levels each factor has."""
         return tuple(len(factor.levels) for factor in self.factors)
 
-    @property
+    @cached_property
     def cells(self) -> tuple[Cell, ...]:
         """Every treatment cell as level places, the last factor changing fastest."""
         return tuple(product(*(range(count) for count in self.shape)))
